@@ -1,0 +1,5 @@
+"""Run the command line with ``python -m ampwarden``."""
+
+from .commands.main import main
+
+main()

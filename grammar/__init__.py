@@ -1,0 +1,1 @@
+"""The languages of ampwarden as Lark grammars: netlist, expression, condition and their shared quantities."""

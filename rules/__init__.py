@@ -1,0 +1,1 @@
+"""The knowledge of ampwarden as data: checks, topologies, parts and preferred-number series."""
