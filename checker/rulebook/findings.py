@@ -77,7 +77,10 @@ class Counts:
 
 @dataclass(frozen=True, slots=True)
 class StageReport:
-    """A stage with its computed measures: ``measures`` maps every contract measure to a value or None."""
+    """A stage with its computed measures: ``measures`` maps every contract measure to a value or None.
+
+    ``values`` maps each role to the values of its parts in the order of ``roles`` (SI units, None where unknown).
+    """
 
     name: str
     topology: str
@@ -86,6 +89,7 @@ class StageReport:
     output: str | None
     roles: Mapping[str, tuple[str, ...]]
     measures: Mapping[str, Any]
+    values: Mapping[str, tuple[float | None, ...]] = field(default_factory=dict)
     properties: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     notes: tuple[str, ...] = ()
     reason: str | None = None
