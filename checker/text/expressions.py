@@ -204,7 +204,9 @@ def names_in(tree: Tree) -> frozenset[str]:
 
 
 def evaluate(
-    text: str, names: Mapping[str, float] | Callable[[str], float | None], functions: Mapping[str, FunctionLine] | None = None
+    text: str,
+    names: Mapping[str, float] | Callable[[str], float | None],
+    functions: Mapping[str, FunctionLine] | None = None,
 ) -> float:
     """Evaluate an expression.
 
@@ -232,7 +234,9 @@ def evaluate(
     return result
 
 
-def _value(tree: Tree, lookup: Callable[[str], float | None], functions: Mapping[str, FunctionLine], depth: int) -> float:
+def _value(
+    tree: Tree, lookup: Callable[[str], float | None], functions: Mapping[str, FunctionLine], depth: int
+) -> float:
     if depth > MAX_DEPTH * 4:
         raise ExpressionError(f"expression nested deeper than the bound of {MAX_DEPTH}")
     operation = tree[0]
@@ -269,7 +273,9 @@ def _value(tree: Tree, lookup: Callable[[str], float | None], functions: Mapping
         raise ExpressionError(f"the expression has no value: {trouble}", kind="arithmetic") from trouble
 
 
-def _call(tree: Tree, lookup: Callable[[str], float | None], functions: Mapping[str, FunctionLine], depth: int) -> float:
+def _call(
+    tree: Tree, lookup: Callable[[str], float | None], functions: Mapping[str, FunctionLine], depth: int
+) -> float:
     name = tree[1]
     if name == "if" and len(tree) == 5:
         chosen = tree[3] if _value(tree[2], lookup, functions, depth + 1) else tree[4]

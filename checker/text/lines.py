@@ -44,7 +44,7 @@ class LogicalLine:
 
 
 def strip_comment(text: str) -> str:
-    """Cut an end-of-line comment: ``;`` anywhere outside quotes, ``$`` and ``//`` after a blank and before one or the end."""
+    """Cut an end-of-line comment: ``;`` outside quotes, ``$`` and ``//`` that stand alone."""
     if ";" not in text and "$" not in text and "//" not in text:
         return text
     quote = ""
@@ -54,10 +54,10 @@ def strip_comment(text: str) -> str:
                 quote = ""
         elif char == '"' or (char == "'" and text.find("'", index + 1) > 0):
             quote = char
-        elif char == ";":
-            return text[:index]
-        elif (char == "$" and _stands_alone(text, index, 1)) or (
-            char == "/" and text.startswith("//", index) and _stands_alone(text, index, 2)
+        elif (
+            char == ";"
+            or (char == "$" and _stands_alone(text, index, 1))
+            or (char == "/" and text.startswith("//", index) and _stands_alone(text, index, 2))
         ):
             return text[:index]
     return text

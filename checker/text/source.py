@@ -59,7 +59,11 @@ def read_source(path: Path, name: str, limits: Limits, spent: int = 0) -> Source
         content = path.read_bytes()
     except OSError as trouble:
         raise NetlistError(
-            Problem("file-unreadable", f"cannot read {name}: {(trouble.strerror or str(trouble)).lower()}", Location(name, 1))
+            Problem(
+                "file-unreadable",
+                f"cannot read {name}: {(trouble.strerror or str(trouble)).lower()}",
+                Location(name, 1),
+            )
         ) from trouble
     return decode_source(content, name)
 

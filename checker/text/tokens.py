@@ -12,7 +12,9 @@ from dataclasses import dataclass
 from .netlist import Expression, Value
 from .values import read_value
 
-_FIELD = re.compile(r"""(?P<braced>\{[^{}]*\})|(?P<quoted>'[^']*')|(?P<string>"[^"]*")|(?P<equals>=)|(?P<word>[^\s,()={}'"]+)""")
+_FIELD = re.compile(
+    r"""(?P<braced>\{[^{}]*\})|(?P<quoted>'[^']*')|(?P<string>"[^"]*")|(?P<equals>=)|(?P<word>[^\s,()={}'"]+)"""
+)
 _GAP = re.compile(r"[\s,()]*")
 
 

@@ -35,7 +35,9 @@ _NUMBER = re.compile(
     r"(?P<mantissa>[+-]?(?:\d+\.?\d*|\.\d+))(?:e(?P<exponent>[+-]?\d+))?(?P<letters>[a-zµμΩω%°]*)$",
     re.IGNORECASE,
 )
-_MARKING = re.compile(r"(?P<sign>[+-]?)(?P<before>\d*)(?P<mark>[a-zµμ])(?P<after>\d+)(?P<letters>[a-zΩω]*)$", re.IGNORECASE)
+_MARKING = re.compile(
+    r"(?P<sign>[+-]?)(?P<before>\d*)(?P<mark>[a-zµμ])(?P<after>\d+)(?P<letters>[a-zΩω]*)$", re.IGNORECASE
+)
 
 _MICRO = str.maketrans({"µ": "u", "μ": "u", "æ": "u", "\u2126": "Ω"})
 
