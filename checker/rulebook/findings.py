@@ -10,6 +10,15 @@ from typing import Any
 from ..errors import Problem
 
 
+# The figures that every report gives for a stage, by their fixed names (null where they do not apply).
+STAGE_MEASURES = (
+    "dc_gain", "midband_gain", "gains", "signal_gain", "noise_gain", "bandwidth_hz", "phase_margin_deg",
+    "output_low_v", "output_high_v", "output_dc_v", "input_cm_low_v", "input_cm_high_v",
+    "cmrr_nominal_db", "cmrr_worst_db", "ratio_mismatch", "corner_hz", "quality", "time_constant_s",
+    "threshold_low_v", "threshold_high_v", "hysteresis_v", "offset_v", "output_current_a", "transresistance_ohm",
+)  # fmt: skip
+
+
 @dataclass(frozen=True, slots=True)
 class Waived:
     """Who accepted a finding, why, and until when."""
@@ -115,10 +124,23 @@ class NetlistReview:
 
 
 @dataclass(frozen=True, slots=True)
+class RuleText:
+    """What a report says about a rule itself, beside its findings."""
+
+    name: str
+    level: str
+    title: str
+    because: str
+    sources: tuple[str, ...] = ()
+    concern: str = ""
+
+
+@dataclass(frozen=True, slots=True)
 class Review:
-    """The review of one or more netlists."""
+    """The review of one or more netlists; ``rules`` tells of every rule that was asked."""
 
     netlists: tuple[NetlistReview, ...]
+    rules: tuple[RuleText, ...] = ()
 
     @property
     def findings(self) -> tuple[Finding, ...]:
