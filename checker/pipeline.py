@@ -8,7 +8,7 @@ topologies, parts) is loaded once for each set of house folders.
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from datetime import date
 from os import PathLike
@@ -52,12 +52,15 @@ class Knowledge:
 class _Library:
     """Intents and knowledge read so far in this run, so that a folder of netlists reads each only once."""
 
+    declared: Intent | None = None
     intents: dict[Path, Intent] = field(default_factory=dict)
     knowledge: dict[object, Knowledge] = field(default_factory=dict)
 
     def intent_for(self, netlist: Path) -> Intent:
         from .text import Intent, find_intent, read_intent
 
+        if self.declared is not None:
+            return self.declared
         place = find_intent(netlist)
         if place is None:
             return Intent()
@@ -138,15 +141,28 @@ def review(
         When the given intent file, or a rule folder that it names, is wrong. One that was found beside a netlist is
         reported with that netlist instead.
     """
-    single = isinstance(paths, str | PathLike)
-    places = [each for path in ([paths] if single else paths) for each in find_netlists(path)]  # type: ignore[list-item,union-attr]
-    library = _Library()
-    declared = _given_intent(intent)
-    if declared is not None:
-        library.knowledge_for(declared)
+    library = _Library(_given_intent(intent))
+    if library.declared is not None:
+        _check_rule_names(library.knowledge_for(library.declared).pack, (*only, *skip))
     day = today or date.today()
-    netlists = tuple(_review_file(each, declared, library, only, skip, day) for each in dict.fromkeys(places))
+
+    def judge(netlist: Netlist, intent: Intent, known: Knowledge) -> NetlistReview:
+        return _judge(netlist, intent, known, only, skip, day)
+
+    netlists = tuple(_read_and(judge, each, library) for each in _places(paths))
     return Review(netlists, _rule_texts(library.knowledge.values()))
+
+
+def survey(
+    paths: str | PathLike[str] | Iterable[str | PathLike[str]], intent: str | PathLike[str] | Intent | None = None
+) -> Review:
+    """Find the stages of netlists and compute their figures; no rule is applied. See :func:`review`."""
+    library = _Library(_given_intent(intent))
+
+    def describe(netlist: Netlist, intent: Intent, known: Knowledge) -> NetlistReview:
+        return _describe(netlist, inspect(netlist, intent, knowledge=known))
+
+    return Review(tuple(_read_and(describe, each, library) for each in _places(paths)))
 
 
 def review_text(
@@ -194,18 +210,23 @@ def _given_intent(intent: str | PathLike[str] | Intent | None) -> Intent | None:
     return intent
 
 
-def _review_file(
-    path: Path, declared: Intent | None, library: _Library, only: Sequence[str], skip: Sequence[str], day: date
+def _places(paths: str | PathLike[str] | Iterable[str | PathLike[str]]) -> tuple[Path, ...]:
+    several = [paths] if isinstance(paths, str | PathLike) else paths
+    return tuple(dict.fromkeys(each for path in several for each in find_netlists(path)))
+
+
+def _read_and(
+    work: Callable[[Netlist, Intent, Knowledge], NetlistReview], path: Path, library: _Library
 ) -> NetlistReview:
-    """Review one file; whatever goes wrong with it stays with it, apart from a wrong call."""
+    """Read one file and work on it; whatever goes wrong with it stays with it, apart from a wrong call."""
     from .text import read_netlist
 
     name = path.as_posix()
     try:
-        intent = declared if declared is not None else library.intent_for(path)
+        intent = library.intent_for(path)
         known = library.knowledge_for(intent)
         netlist = read_netlist(path, libraries=intent.folders(intent.libraries), style=intent.style)
-        return _judge(netlist, intent, known, only, skip, day)
+        return work(netlist, intent, known)
     except UsageError:
         raise
     except AmpwardenError as trouble:
@@ -244,6 +265,12 @@ def _judge(
     _check_rule_names(known.pack, (*only, *skip))
     seen = inspect(netlist, intent, knowledge=known)
     outcome = apply_pack(known.pack, seen.bench, intent, only=only, skip=skip, today=day)
+    described = _describe(netlist, seen)
+    return replace(described, findings=outcome.findings, unevaluated=outcome.unevaluated, counts=outcome.counts)
+
+
+def _describe(netlist: Netlist, seen: Inspection) -> NetlistReview:
+    """Return what was found and computed, without judgement."""
     assumptions = list(seen.circuit.assumptions)
     stages = tuple(report_stage(stage, seen.bench, assumptions) for stage in seen.stages)
     return NetlistReview(
@@ -253,9 +280,6 @@ def _judge(
         problems=(*netlist.problems, *seen.circuit.problems),
         rails=tuple((rail.net, rail.volts, rail.origin) for rail in seen.circuit.rails.values()),
         stages=stages,
-        findings=outcome.findings,
-        unevaluated=outcome.unevaluated,
-        counts=outcome.counts,
         assumptions=tuple(dict.fromkeys(assumptions)),
     )
 

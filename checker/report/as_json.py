@@ -116,9 +116,7 @@ def _finding(finding: Finding) -> FindingRecord:
         assumptions=list(finding.assumptions),
         waived=None
         if waived is None
-        else WaivedRecord(
-            reason=waived.reason, by=waived.by, until=waived.until.isoformat() if waived.until else None
-        ),
+        else WaivedRecord(reason=waived.reason, by=waived.by, until=waived.until.isoformat() if waived.until else None),
         follows_from=finding.follows_from,
         fingerprint=finding.fingerprint,
     )

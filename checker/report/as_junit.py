@@ -13,7 +13,7 @@ from xml.sax.saxutils import escape, quoteattr
 from ..errors import render_problem
 from ..rulebook.findings import Finding, NetlistReview, Review
 from .formats import Options
-from .wording import LEVELS, figures_of, plural, remedy_words, waiver_words
+from .wording import fails, figures_of, plural, remedy_words, waiver_words
 
 
 @dataclass(frozen=True, slots=True)
@@ -69,11 +69,6 @@ def _cases(netlist: NetlistReview, fail_on: str) -> Iterator[Case]:
         by_rule.setdefault(each.rule, []).append(f"{each.subject}: {each.reason}")
     for rule, reasons in by_rule.items():
         yield Case(f"{rule}: not evaluated", "skipped", f"{plural(len(reasons), 'subject')}; {'; '.join(reasons)}")
-
-
-def fails(level: str, fail_on: str) -> bool:
-    """Tell whether a finding of this level fails a review that fails on ``fail_on``."""
-    return fail_on in LEVELS and LEVELS.index(level) <= LEVELS.index(fail_on)
 
 
 def _finding_text(finding: Finding) -> str:

@@ -43,6 +43,24 @@ def report_lines(review: Review, options: Options) -> Iterator[Line]:
     yield (("verdict   ", "heading"), (verdict(review), _verdict_style(review)))
 
 
+def survey_lines(review: Review, options: Options) -> Iterator[Line]:
+    """Yield the stages of each netlist alone, without findings and verdict."""
+    width = max(40, options.width)
+    for index, netlist in enumerate(review.netlists):
+        if index:
+            yield ()
+        yield from heading_lines(netlist, width)
+        if netlist.error:
+            yield from _unread_lines(netlist, width)
+            continue
+        yield from labelled("rails", _rail_spans(netlist), width, 0)
+        for stage in netlist.stages:
+            yield ()
+            yield from stage_lines(stage, width)
+        if not netlist.stages:
+            yield from labelled("stages", [("none found", "")], width, 0)
+
+
 def netlist_lines(netlist: NetlistReview, width: int) -> Iterator[Line]:
     """Yield the section of one netlist."""
     yield from heading_lines(netlist, width)
@@ -195,9 +213,7 @@ def _follower_lines(findings: Iterable[Finding], width: int) -> Iterator[Line]:
 def _warning_lines(netlist: NetlistReview, width: int) -> Iterator[Line]:
     """Yield what the reader met in the text and no finding tells."""
     told = {(each.rule, each.line) for each in netlist.findings}
-    left = [
-        each for each in netlist.problems if (each.kind, each.location.line if each.location else 0) not in told
-    ]
+    left = [each for each in netlist.problems if (each.kind, each.location.line if each.location else 0) not in told]
     if not left:
         return
     yield ()

@@ -29,6 +29,7 @@ _KINDS: dict[str, Any] = {
     "map": dict[str, float | None] | None,
 }
 
+
 def _measure_fields() -> dict[str, Any]:
     units = {"": "", "%": ""}
     said = {word.name: word.label + units.get(word.unit, f", {word.unit}") for word in MEASURES}

@@ -176,6 +176,11 @@ def open_findings(findings: Iterable[Finding]) -> tuple[Finding, ...]:
     return tuple(each for each in findings if each.waived is None)
 
 
+def fails(level: str, fail_on: str) -> bool:
+    """Tell whether a finding of this level fails a review that fails on ``fail_on``."""
+    return fail_on in LEVELS and LEVELS.index(level) <= LEVELS.index(fail_on)
+
+
 def count_levels(findings: Iterable[Finding]) -> dict[str, int]:
     """Count open findings by level, the gravest first."""
     counts = dict.fromkeys(LEVELS, 0)
