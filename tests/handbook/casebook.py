@@ -213,8 +213,8 @@ def measured(check: Check) -> float | str:
             if "minus" not in data
             else (bench.bench.solution.voltage(data["net"]) - bench.bench.solution.voltage(data["minus"]))
         )
-    elif quantity == "total_gain":
-        value = _total_gain(bench, data)
+    elif quantity in {"total_gain", "signal_chain_gain"}:
+        value = _product(bench, "dc_gain" if quantity == "total_gain" else "signal_gain")
     else:
         value = bench.figure(quantity, data.get("subject", "stage"), data.get("stage") or data.get("of"))
         if isinstance(value, Mapping):
@@ -229,11 +229,9 @@ def measured(check: Check) -> float | str:
     return _converted(_plain(value, quantity), data)
 
 
-def _total_gain(bench: Workbench, data: Mapping[str, Any]) -> float:
-    total = 1.0
-    for subject in bench.bench.subjects("stage"):
-        total *= _plain(bench.figure("dc_gain", "stage", subject.name), "dc_gain")
-    return total
+def _product(bench: Workbench, quantity: str) -> float:
+    names = [subject.name for subject in bench.bench.subjects("stage")]
+    return math.prod(_plain(bench.figure(quantity, "stage", name), quantity) for name in names)
 
 
 def _stage(bench: Workbench, data: Mapping[str, Any]) -> Any:
