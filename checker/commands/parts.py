@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING
 import click
 
 from ..errors import Problem, UsageError
-from ..quantities import engineering
+from ..quantities import engineering, nearest_names
 from ..report.formats import FORMATS, Options
 from ..report.lines import Line, Span, labelled, wrap, write
 from .options import report_options
@@ -69,8 +69,8 @@ def _find(catalogue: Catalogue, name: str) -> PartData:
     found = catalogue.find(name)
     if found is None:
         cure = "declare it in review.toml under [parts.NAME], or list all with `ampwarden parts`"
-        problem = Problem("part-unknown", f"no part data for `{name}`", nearest=catalogue.nearest(name), cure=cure)
-        raise UsageError(problem)
+        near = nearest_names(name, (number for each in catalogue.parts for number in (each.name, *each.aliases)))
+        raise UsageError(Problem("part-unknown", f"no part data for `{name}`", nearest=near, cure=cure))
     return found
 
 

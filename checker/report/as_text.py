@@ -184,7 +184,7 @@ def finding_lines(finding: Finding, width: int, explained: set[str]) -> Iterator
     yield from two_sided(left, (f"{finding.file}:{finding.line}", "place"), prose)
     yield from wrap([(finding.message, "")], prose, 4)
     if waived:
-        yield from labelled("waiver", [(waived, "")], prose)
+        yield from wrap([(waived, "")], prose, 4)
         return
     facts = figures_of(finding)
     if facts:

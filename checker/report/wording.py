@@ -154,11 +154,10 @@ def figures_of(finding: Finding) -> tuple[tuple[str, str], ...]:
 
 
 def remedy_words(finding: Finding) -> str | None:
-    """Return the remedy with the mark of whether it was computed, or None when there is none."""
+    """Return the remedy with its mark, or None: ``verified`` means that the changed circuit was computed and passes."""
     if finding.remedy is None:
         return None
-    mark = "verified by computing the changed circuit" if finding.remedy.is_verified else "not verified"
-    return f"{finding.remedy.text} ({mark})"
+    return f"{finding.remedy.text}, {'verified' if finding.remedy.is_verified else 'not verified'}"
 
 
 def waiver_words(finding: Finding) -> str | None:
@@ -210,16 +209,15 @@ def verdict(review: Review) -> str:
     if not netlists:
         return "nothing to review: no netlist found"
     unread = sum(1 for each in netlists if each.error)
-    read = len(netlists) - unread
-    parts = []
-    if read:
-        parts.append(f"{level_words(review.findings)} in {plural(read, 'netlist')}")
+    parts = [f"{level_words(review.findings)} in {plural(len(netlists), 'netlist')}"]
+    if unread == len(netlists):
+        parts = ["nothing judged"]
     if unread:
-        parts.append(f"{plural(unread, 'netlist')} could not be read")
+        parts.append(f"{unread} not read")
     waived = sum(each.counts.waived for each in netlists)
     if waived:
         parts.append(f"{waived} waived")
     unknown = sum(each.counts.unevaluated for each in netlists)
     if unknown:
-        parts.append(f"{plural(unknown, 'check')} not evaluated")
+        parts.append(f"{unknown} not evaluated")
     return "; ".join(parts)
