@@ -34,6 +34,7 @@ class Stage:
     stiff nets that act as offset inputs. ``roles`` maps a template's role names to designators; ``branches`` maps the
     same names to the reduced branches. ``properties`` are facts beside the name: ``ac_coupled``, ``input_filter``,
     ``t_network``, ``isolation_resistor``, ``level_shift``, ``load`` … with the designators that show them.
+    ``formulas`` are those of the template by measure, ``values`` what they read (see ``recognize.role_values``).
     ``reason`` says why nothing fits when the topology is ``unrecognized``.
     """
 
@@ -49,4 +50,6 @@ class Stage:
     properties: Mapping[str, tuple[str, ...]] = field(default_factory=dict)
     inner_nets: Mapping[str, str] = field(default_factory=dict)
     evidence: tuple[str, ...] = ()
+    formulas: Mapping[str, str] = field(default_factory=dict)
+    values: Mapping[str, float] = field(default_factory=dict)
     reason: str | None = None
