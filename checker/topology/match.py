@@ -183,6 +183,8 @@ class Matcher:
         for reduction in match.reductions:
             if net in reduction.place.own:
                 return reduction.place.at(net)
+        for amplifier, _ in self._by_pin.get(net, ()):
+            return self.reduction(amplifier, match.template.depth).place.at(net)
         for reduction in match.reductions:
             found = reduction.place.at(net)
             if found:
@@ -192,7 +194,7 @@ class Matcher:
     def _fits(self, match: Match, line: BranchLine, edge: Edge, net: str, end: str) -> bool:
         if not _KINDS[line.letter](edge):
             return False
-        if any(edge is used for edges in match.roles.values() for used in edges):
+        if edge.key in {used.key for edges in match.roles.values() for used in edges}:
             return False
         other = edge.other(net)
         if end in match.nets:
@@ -243,9 +245,9 @@ class Matcher:
         return True
 
     def _pin_explained(self, match: Match, name: str, net: str) -> bool:
-        used = {id(edge) for edges in match.roles.values() for edge in edges}
+        used = {edge.key for edges in match.roles.values() for edge in edges}
         own = self._own_nets(match)
-        rest = [edge for edge in self._edges_at(match, net) if id(edge) not in used]
+        rest = [edge for edge in self._edges_at(match, net) if edge.key not in used]
         if name == _ANY:
             feedback = {each.output for each in match.amplifiers.values()}
             return net not in feedback and not any(edge.other(net) in feedback for edge in rest)

@@ -62,6 +62,11 @@ class Edge:
         """Designators of the parts of the branch."""
         return tuple(dict.fromkeys([*(leaf.part.designator for leaf in self.leaves), *self.mesh_parts]))
 
+    @property
+    def key(self) -> tuple[frozenset[str], frozenset[str]]:
+        """What makes the branch the same in the surroundings of two amplifiers: its ends and its parts."""
+        return frozenset((self.one, self.two)), frozenset(self.designators)
+
     def other(self, net: str) -> str:
         """Return the far end seen from ``net``."""
         return self.two if self.one == net else self.one

@@ -8,10 +8,9 @@ junctions (T-networks, attenuators) replaced by their star-mesh equivalent: ampl
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 
 from ..circuit.graph import Circuit
-from ..circuit.parts import PartKind
 from .neighbourhood import Edge, Leaf, Neighbourhood
 
 
@@ -42,7 +41,7 @@ def reduce_plainly(circuit: Circuit, place: Neighbourhood) -> Reduced:
     _set_clamps_aside(circuit, found)
     _settle(found)
     while True:
-        if _set_shunts_aside(circuit, found) or _mesh_one(circuit, found):
+        if _set_shunts_aside(circuit, found) or _mesh_one(circuit, found) or _fold_coupling(circuit, found):
             _settle(found)
             continue
         break
@@ -126,7 +125,7 @@ def _set_clamps_aside(circuit: Circuit, found: Reduced) -> None:
             kind = "input_clamp"
         elif place.output in ends and place.minus in ends:
             continue
-        elif any(circuit.is_stiff(net) for net in ends) and (
+        elif any(_is_quiet(circuit, net) for net in ends) and (
             ends & place.inner or ends & {place.plus, place.minus} - {place.output}
         ):
             kind = "clamp"
@@ -134,6 +133,10 @@ def _set_clamps_aside(circuit: Circuit, found: Reduced) -> None:
             continue
         place.edges.remove(edge)
         found.note(kind, edge.designators)
+
+
+def _is_quiet(circuit: Circuit, net: str) -> bool:
+    return circuit.is_stiff(net) and net not in circuit.signals
 
 
 def _set_shunts_aside(circuit: Circuit, found: Reduced) -> bool:
@@ -144,7 +147,7 @@ def _set_shunts_aside(circuit: Circuit, found: Reduced) -> bool:
             continue
         ends = (edge.one, edge.two)
         inner = [net for net in ends if net in place.inner]
-        stiff = [net for net in ends if circuit.is_stiff(net)]
+        stiff = [net for net in ends if _is_quiet(circuit, net)]
         if inner and (stiff or len(inner) == 1 and edge.other(inner[0]) in place.own and len(place.at(inner[0])) > 2):
             if not stiff:
                 continue
@@ -185,14 +188,35 @@ def _mesh_one(circuit: Circuit, found: Reduced) -> bool:
     return False
 
 
-def split_series(edge: Edge) -> tuple[Edge, ...]:
-    """Return the pieces of a series branch, the branch itself when it is none."""
-    return edge.pieces if edge.form == "series" else (edge,)
-
-
-def turned(edge: Edge, start: str) -> Edge:
-    """Return the branch with ``start`` as its first end."""
-    return edge if edge.one == start else replace(edge, one=edge.two, two=edge.one)
+def _fold_coupling(circuit: Circuit, found: Reduced) -> bool:
+    """Dissolve an inner net where a coupling capacitor meets resistors: the capacitor goes in series with each of them."""
+    place = found.place
+    for net in sorted(place.inner):
+        touching = place.at(net)
+        blocking = [edge for edge in touching if edge.ohm == math.inf and "C" in edge.letters]
+        passing = [
+            edge for edge in touching if edge.ohm is not None and math.isfinite(edge.ohm) and "D" not in edge.letters
+        ]
+        if len(blocking) != 1 or len(passing) < 2 or len(blocking) + len(passing) != len(touching) or len(touching) > 6:
+            continue
+        source = blocking[0].other(net)
+        if source in place.own or source in place.inner or circuit.is_stiff(source) and source not in circuit.signals:
+            continue
+        for edge in touching:
+            place.edges.remove(edge)
+        place.inner.discard(net)
+        for edge in passing:
+            end = edge.other(net)
+            if not circuit.is_stiff(end) and end != source:
+                place.edges.append(_series((end, source), edge, blocking[0]))
+        for index, one in enumerate(passing):
+            for two in passing[index + 1 :]:
+                ends = one.other(net), two.other(net)
+                if ends[0] != ends[1] and not (circuit.is_stiff(ends[0]) and circuit.is_stiff(ends[1])):
+                    place.edges.append(_series(ends, one, two))
+        found.note("coupling_network", tuple(name for edge in touching for name in edge.designators))
+        return True
+    return False
 
 
 def capacitance_of(edge: Edge) -> float | None:
@@ -207,8 +231,3 @@ def capacitance_of(edge: Edge) -> float | None:
     if edge.form == "series" and all(piece.form == "leaf" for piece in edge.pieces):
         return 1 / sum(1 / leaf.value for leaf in capacitors if leaf.value)
     return None
-
-
-def is_supply_source(kind: PartKind) -> bool:
-    """True for independent voltage sources."""
-    return kind is PartKind.VOLTAGE_SOURCE
