@@ -1,218 +1,244 @@
-"""Amplifiers: instances of amplifier definitions, packages by their pinout, bare high-gain sources."""
+"""Amplifiers from clues: the roles of pins on evidence, one :class:`Amplifier` for each channel.
+
+Roles that a definition gives are taken as they are. Where a line only lists nets, every customary order is held
+against the rails: the supply pins must sit on supplies of the right polarity and no output may sit on a rail. If one
+order is left it counts; where several are left, the part stays undetermined and the reviewer is told what to declare.
+"""
 
 from __future__ import annotations
 
-import re
 from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
 
-from .catalogue import Catalogue
-from .flatten import FlatAmplifier
-from .graph import Circuit
-from .macromodels import HIGH_GAIN
-from .partdata import PartData, Pinout
+from .assemble import unique_names
+from .clues import Clue
+from .definitions import AMPLIFIER_KINDS, FIVE_PIN_ORDERS, STANDARD
+from .partdata import PartData
 from .parts import Amplifier, Part, PartKind, Pin, Undetermined
+from .pinouts import split_channels
+from .railnames import is_negative_rail_name, is_rail_name
 
-SIGNAL_KINDS = frozenset(
-    {"op-amp", "comparator", "current-feedback", "instrumentation amplifier", "difference amplifier", "buffer"}
-)
+DEFAULT_GAIN = 1e5
+OPEN_STAGES = frozenset({"open-collector", "open-drain"})
 
-_AMPLIFIER_LIKE = re.compile(r"op.?amp|^(?:OPA|AD8|LM[23]|TL|MCP6|NE55|LT1|INA|MAX4|TLV|LMV|TS)\d", re.IGNORECASE)
-
-_MAKERS_ORDER = ("IN+", "IN-", "V+", "V-", "OUT")
-
-
-def name_package_pins(part: Part, data: PartData, pinout: Pinout) -> Part:
-    """Return the part with its pins named by their roles."""
-    roles = {number: role for role, number in pinout.roles}
-    pins = tuple(
-        Pin(_unique(roles.get(index, f"PIN{index}"), index, pinout), pin.net) for index, pin in enumerate(part.pins, 1)
-    )
-    kind = PartKind.AMPLIFIER if data.kind in SIGNAL_KINDS else PartKind.REGULATOR
-    return Part(
-        designator=part.designator,
-        kind=kind,
-        pins=pins,
-        location=part.location,
-        part_name=part.part_name,
-        params=part.params,
-        marks=part.marks,
-        is_fitted=part.is_fitted,
-    )
+Supplies = Mapping[str, float | None]
+"""Nets that may be supplies, with their voltage where it is known; ground is 0 V."""
 
 
-def _unique(role: str, number: int, pinout: Pinout) -> str:
-    twins = [each for each, _ in pinout.roles if each == role]
-    return role if len(twins) == 1 else f"{role}@{number}"
+@dataclass(frozen=True, slots=True)
+class Resolution:
+    """What became of a clue: channels with their roles and the evidence, or the reason why there are none."""
+
+    channels: tuple[Mapping[str, int], ...] = ()
+    roles: tuple[str, ...] = ()
+    evidence: str = ""
+    reason: str = ""
+    assumption: str | None = None
 
 
-def choose_pinout(part: Part, data: PartData, ground: str | None) -> tuple[Pinout | None, str]:
-    """Return the pinout that a package instance fits, with the evidence: number of pins, supplies on different nets."""
-    count = len(part.pins)
-    fitting = [each for each in data.pinouts if max((number for _, number in each.roles), default=0) == count]
-    if len(fitting) == 1:
-        return fitting[0], f"pinout {fitting[0].package}"
-    if len(fitting) > 1:
-        plausible = [each for each in fitting if _supplies_differ(part, each)]
-        if len(plausible) == 1:
-            return plausible[0], f"pinout {plausible[0].package}"
-        return None, f"{len(fitting)} pinouts of {data.name} have {count} pins"
-    return None, f"no pinout of {data.name} with {count} pins is known"
-
-
-def _supplies_differ(part: Part, pinout: Pinout) -> bool:
-    nets = {role: part.pins[number - 1].net for role, number in pinout.roles if number <= len(part.pins)}
-    outputs = {net for role, net in nets.items() if role.startswith("OUT")}
-    return nets.get("V+") != nets.get("V-") and not {nets.get("V+"), nets.get("V-")} & outputs
-
-
-def package_channels(part: Part, data: PartData, evidence: str) -> list[Amplifier]:
-    """Return the channels of a part whose pins carry roles: ``U1A``, ``U1B`` … for several, ``U1`` for one."""
-    nets = {pin.name: pin.net for pin in part.pins}
-    numbers = sorted({int(match[1]) for role in nets if (match := re.match(r"^OUT(\d+)$", role))})
-    channels: list[tuple[str, str, str, str]] = []
-    if numbers:
-        for index, number in enumerate(numbers):
-            letter = chr(ord("A") + index)
-            channels.append((f"{part.designator}{letter}", f"IN{number}+", f"IN{number}-", f"OUT{number}"))
-    else:
-        channels.append((part.designator, "IN+", "IN-", "OUT"))
-    found = []
-    own = {role for _, *roles in channels for role in roles}
-    for name, plus, minus, output in channels:
-        if plus not in nets or minus not in nets or output not in nets:
-            continue
-        others = tuple((role, net) for role, net in nets.items() if role not in own and role not in {"V+", "V-"})
-        found.append(
-            Amplifier(
-                name=name,
-                designator=part.designator,
-                kind=data.kind,
-                plus=nets[plus],
-                minus=nets[minus],
-                output=nets[output],
-                location=part.location,
-                supply_plus=nets.get("V+"),
-                supply_minus=nets.get("V-"),
-                others=others,
-                part_name=part.part_name,
-                data=data,
-                gain=data_gain(data),
-                gain_origin="part" if data.open_loop_gain_db is not None else "assumed",
-                evidence=evidence,
-                is_open_output=data.output_stage in {"open-collector", "open-drain"},
-            )
+def resolve(clue: Clue, supplies: Supplies) -> Resolution:
+    """Find the roles of an instance's pins."""
+    if clue.channels:
+        channels = tuple(_with_supplies(each, clue, supplies) for each in clue.channels)
+        return Resolution(channels, (), f"pins by the {clue.evidence}")
+    name = clue.part_name or "its part"
+    if not clue.orders:
+        return Resolution(reason=f"no pinout of {name} with {len(clue.nets)} pins is known")
+    fitting: list[tuple[str, tuple[str, ...], int]] = []
+    objection = ""
+    for text, roles in clue.orders:
+        score, why = _judge(roles, clue.nets, supplies)
+        if score < 0:
+            objection = objection or f"by the {text} {why}"
+        else:
+            fitting.append((text, roles, score))
+    if not fitting:
+        return Resolution(reason=f"its pins do not fit {name}: {objection}")
+    best = max(score for _, _, score in fitting)
+    kept = [each for each in fitting if each[2] == best]
+    different = {_meaning(roles, clue.nets) for _, roles, _ in kept}
+    text, roles, score = kept[0]
+    assumption = None
+    if len(different) > 1:
+        standard = [each for each in kept if each[1] == STANDARD]
+        if not standard or not _differ_in_inputs(different):
+            words = " or ".join(" ".join(each) for _, each, _ in kept[:3])
+            return Resolution(reason=f"its {len(clue.nets)} nets fit several pin orders of {name}: {words}")
+        text, roles, score = standard[0]
+        assumption = f"{clue.designator}: inputs of {name} are taken in {text}, IN+ first"
+    if score == 0 and _is_customary(roles, clue.orders) and {"V+", "V-"} <= set(roles):
+        return Resolution(
+            reason=f"nothing shows which of the {len(clue.nets)} nets of {name} are its supplies",
         )
+    count = clue.data.channels_of(clue.part_name or "") if clue.data is not None else None
+    outputs = sum(1 for role in roles if role.startswith("OUT") and role[3:].isdigit())
+    channels = split_channels(roles, max(outputs, 1) if count is None or outputs else 1)
+    evidence = f"pins by the {text}" + ("; its supply pins sit on supplies" if score > 0 else "")
+    return Resolution(channels, roles, evidence, assumption=assumption)
+
+
+def _is_customary(roles: tuple[str, ...], orders: Sequence[tuple[str, tuple[str, ...]]]) -> bool:
+    return any(roles == each for _, each in FIVE_PIN_ORDERS) and len(orders) > 1
+
+
+def _differ_in_inputs(meanings: set[tuple[tuple[str, str], ...]]) -> bool:
+    rest = {tuple(pair for pair in each if not pair[0].startswith("IN")) for each in meanings}
+    return len(rest) == 1
+
+
+def _meaning(roles: Sequence[str], nets: Sequence[str]) -> tuple[tuple[str, str], ...]:
+    """What an order says about nets, apart from pins that do not matter."""
+    core = [
+        (role, net) for role, net in zip(roles, nets, strict=True) if role[:2] in {"IN", "OU", "V+", "V-", "RE", "RG"}
+    ]
+    return tuple(sorted(core))
+
+
+def _judge(roles: Sequence[str], nets: Sequence[str], supplies: Supplies) -> tuple[int, str]:
+    """Score an order: below zero when it contradicts the rails, above when the supply pins sit on supplies."""
+    by_role: dict[str, str] = {}
+    for role, net in zip(roles, nets, strict=True):
+        by_role.setdefault(role, net)
+    plus, minus = by_role.get("V+"), by_role.get("V-")
+    outputs = [net for role, net in by_role.items() if role == "OUT" or (role.startswith("OUT") and role[3:].isdigit())]
+    for output in outputs:
+        if output in supplies and supplies[output] != 0.0 and not _is_reference(output):
+            return -1, f"an output would sit on the rail {output}"
+        if supplies.get(output, 1.0) == 0.0:
+            return -1, f"an output would sit on ground ({output})"
+    if plus is None or minus is None:
+        return 0, ""
+    if plus == minus:
+        return -1, f"both supply pins would sit on {plus}"
+    high, low = _polarity(plus, supplies), _polarity(minus, supplies)
+    if high is not None and high <= 0:
+        return -1, f"V+ would sit on {plus}"
+    if low is not None and low > 0:
+        return -1, f"V- would sit on {minus}"
+    volts_high, volts_low = supplies.get(plus), supplies.get(minus)
+    if volts_high is not None and volts_low is not None and volts_high <= volts_low:
+        return -1, f"V+ would sit on {plus}, below V- on {minus}"
+    return int(high is not None) + int(low is not None), ""
+
+
+def _is_reference(net: str) -> bool:
+    return not is_rail_name(net)
+
+
+def _polarity(net: str, supplies: Supplies) -> int | None:
+    """Sign of a net as a supply: 1, 0 (ground), -1; None when it is no supply as far as one can see."""
+    if net not in supplies:
+        return None
+    volts = supplies[net]
+    if volts is None:
+        return -1 if is_negative_rail_name(net) else 1
+    return (volts > 0) - (volts < 0)
+
+
+def _with_supplies(roles: Mapping[str, int], clue: Clue, supplies: Supplies) -> Mapping[str, int]:
+    """Tell V+ from V- among two left-over ports by the voltages of their nets."""
+    if "V+" in roles or len(clue.ports) != 5 or len(roles) != 3:
+        return roles
+    first, second = (index for index in range(5) if index not in roles.values())
+    one, two = _polarity(clue.nets[first], supplies), _polarity(clue.nets[second], supplies)
+    if one is None or two is None or one == two:
+        return roles
+    high, low = (first, second) if one > two else (second, first)
+    return {**roles, "V+": high, "V-": low}
+
+
+def named_pins(part: Part, resolution: Resolution) -> Part:
+    """Return the part with its pins named by their roles."""
+    if resolution.roles:
+        names = unique_names(resolution.roles)
+    elif len(resolution.channels) == 1:
+        held = {index: role for role, index in resolution.channels[0].items()}
+        names = unique_names(held.get(index, pin.name) for index, pin in enumerate(part.pins))
+    else:
+        numbered: dict[int, str] = {}
+        for number, channel in enumerate(resolution.channels, 1):
+            for role, index in channel.items():
+                core = {"IN+": f"IN{number}+", "IN-": f"IN{number}-", "OUT": f"OUT{number}"}
+                numbered.setdefault(index, core.get(role, role))
+        names = unique_names(numbered.get(index, pin.name) for index, pin in enumerate(part.pins))
+    pins = tuple(Pin(name, pin.net) for name, pin in zip(names, part.pins, strict=True))
+    return replace(part, pins=pins)
+
+
+def channels_of(clue: Clue, resolution: Resolution, part: Part) -> list[Amplifier]:
+    """Return the amplifiers of a resolved instance; ``U1A``, ``U1B`` … when it holds several."""
+    data = clue.data
+    found = []
+    several = len(resolution.channels) > 1
+    for number, roles in enumerate(resolution.channels):
+        nets = {role: part.pins[index].net for role, index in roles.items()}
+        amplifier = _amplifier(clue, data, nets, f"{clue.designator}{chr(65 + number)}" if several else clue.designator)
+        if amplifier is not None:
+            found.append(replace(amplifier, evidence=resolution.evidence))
     return found
 
 
-def data_gain(data: PartData | None) -> float:
-    """Return the open-loop gain of a part, 1e5 where its data do not tell."""
-    if data is None or data.open_loop_gain_db is None:
-        return 1e5
-    return float(10 ** (data.open_loop_gain_db / 20))
+_OWN = frozenset({"IN+", "IN-", "OUT", "V+", "V-"})
 
 
-def instance_amplifier(flat: FlatAmplifier) -> Amplifier:
-    """Return the amplifier of an instance whose definition is one."""
-    part, shape = flat.part, flat.shape
-    nets = {pin.name: pin.net for pin in part.pins}
-    own = {"IN+", "IN-", "OUT", "V+", "V-"}
-    gain = shape.gain if shape.gain is not None else data_gain(shape.data)
-    if shape.gain is not None:
-        origin = "netlist"
+def _amplifier(clue: Clue, data: PartData | None, nets: Mapping[str, str], name: str) -> Amplifier | None:
+    output = nets.get("OUT")
+    plus = nets.get("IN+", nets.get("IN"))
+    minus = nets.get("IN-")
+    kind = data.kind if data is not None else _kind_by_roles(clue, nets)
+    if minus is None and kind == "buffer":
+        minus = output
+    if output is None or plus is None or minus is None:
+        return None
+    gain, origin = DEFAULT_GAIN, "assumed"
+    if clue.gain is not None and abs(clue.gain) > 0:
+        gain, origin = abs(clue.gain), "netlist"
+    elif data is not None and data.open_loop_gain_db is not None:
+        gain, origin = 10 ** (data.open_loop_gain_db / 20), "part"
+    return Amplifier(
+        name,
+        clue.designator,
+        kind,
+        plus,
+        minus,
+        output,
+        clue.location,
+        nets.get("V+"),
+        nets.get("V-"),
+        tuple((role, net) for role, net in nets.items() if role not in _OWN and role != "IN"),
+        clue.part_name,
+        data,
+        gain,
+        origin,
+        clue.inner,
+        is_open_output=data is not None and data.output_stage in OPEN_STAGES,
+    )
+
+
+def _kind_by_roles(clue: Clue, nets: Mapping[str, str]) -> str:
+    if "RG" in nets or {"REF", "RG2"} <= nets.keys():
+        return "instrumentation amplifier"
+    if "REF" in nets and "SENSE" in nets:
+        return "difference amplifier"
+    name = (clue.part_name or "").lower()
+    return "comparator" if "comp" in name and "compens" not in name else "op-amp"
+
+
+def undetermined(clue: Clue, resolution: Resolution) -> Undetermined:
+    """Say why an instance could not be read and what to declare."""
+    name = clue.part_name or "NAME"
+    if len(clue.nets) == 5:
+        what = f'[parts.{name}] with kind = "op-amp" and pin_order = "IN+ IN- V+ V- OUT" in the order of its nets'
     else:
-        origin = "part" if shape.data is not None and shape.data.open_loop_gain_db is not None else "assumed"
-    return Amplifier(
-        name=part.designator,
-        designator=part.designator,
-        kind=shape.kind,
-        plus=nets["IN+"],
-        minus=nets["IN-"],
-        output=nets["OUT"],
-        location=part.location,
-        supply_plus=nets.get("V+"),
-        supply_minus=nets.get("V-"),
-        others=tuple((role, net) for role, net in nets.items() if role not in own),
-        part_name=part.part_name,
-        data=shape.data,
-        gain=gain,
-        gain_origin=origin,
-        inner=flat.inner,
-        evidence=f"pins by {shape.evidence}",
-        is_open_output=shape.is_open_output,
-    )
+        what = f'[parts.{name}] with kind and pinouts, such as pinouts = {{ single8 = "IN- 2 IN+ 3 V- 4 OUT 6 V+ 7" }}'
+    return Undetermined(clue.designator, resolution.reason, what, clue.location)
 
 
-def source_amplifier(part: Part, ground: str | None) -> Amplifier | None:
-    """Return the ideal amplifier that a bare high-gain voltage-controlled source stands for, or None."""
-    if part.kind is not PartKind.VCVS or part.value is None or abs(part.value) < HIGH_GAIN or len(part.control) != 2:
-        return None
-    plus, minus = part.control
-    output, reference = part.pins[0].net, part.pins[1].net
-    gain = part.value
-    if output == ground and reference != ground:
-        output, gain = reference, -gain
-    elif reference != ground:
-        return None
-    if gain < 0:
-        plus, minus, gain = minus, plus, -gain
-    return Amplifier(
-        name=part.designator,
-        designator=part.designator,
-        kind="op-amp",
-        plus=plus,
-        minus=minus,
-        output=output,
-        location=part.location,
-        gain=gain,
-        gain_origin="netlist",
-        evidence="a controlled source of high gain",
-    )
+def is_amplifier_clue(clue: Clue) -> bool:
+    """True for a clue about an amplifier, false for one about a rail source."""
+    return clue.data is None or clue.data.kind in AMPLIFIER_KINDS
 
 
-def find_amplifiers(
-    circuit: Circuit, instances: Sequence[FlatAmplifier], packages: Mapping[str, str], catalogue: Catalogue
-) -> tuple[tuple[Amplifier, ...], tuple[Undetermined, ...]]:
-    """Return all amplifiers in the order of the netlist, and the parts whose pins could not be told.
-
-    ``packages`` maps the designator of each part whose pins were named by a pinout to the evidence.
-    """
-    by_instance = {each.part.designator: each for each in instances}
-    amplifiers: list[Amplifier] = []
-    undetermined: list[Undetermined] = []
-    for designator, part in circuit.parts.items():
-        if not part.is_fitted:
-            continue
-        if designator in by_instance:
-            amplifiers.append(instance_amplifier(by_instance[designator]))
-        elif designator in packages:
-            data = catalogue.find(part.part_name)
-            if data is not None and data.kind in SIGNAL_KINDS:
-                amplifiers.extend(package_channels(part, data, packages[designator]))
-        elif part.kind is PartKind.VCVS:
-            ideal = source_amplifier(part, circuit.ground)
-            if ideal is not None:
-                amplifiers.append(ideal)
-        elif part.kind is PartKind.OPAQUE and part.part_name:
-            missing = _undetermined(part, catalogue, circuit.ground)
-            if missing is not None:
-                undetermined.append(missing)
-    return tuple(amplifiers), tuple(undetermined)
-
-
-def _undetermined(part: Part, catalogue: Catalogue, ground: str | None) -> Undetermined | None:
-    name = part.part_name or ""
-    data = catalogue.find(name)
-    if data is None:
-        if not _AMPLIFIER_LIKE.search(name):
-            return None
-        return Undetermined(
-            part.designator,
-            f"no part data for `{name}`: its pins are not known",
-            f'[parts.{name}] with kind and pinouts, such as pinouts = {{ single8 = "IN- 2 IN+ 3 V- 4 OUT 6 V+ 7" }}',
-            part.location,
-        )
-    _, reason = choose_pinout(part, data, ground)
-    return Undetermined(
-        part.designator, reason, f"[parts.{name}] pinouts for a package of {len(part.pins)} pins", part.location
-    )
+def kind_when_unknown(part: Part) -> Part:
+    """Return the part as an opaque one: nothing is computed through it."""
+    return replace(part, kind=PartKind.OPAQUE)

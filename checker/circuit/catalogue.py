@@ -1,8 +1,11 @@
-"""The part catalogue: families from ``rules/parts``, house parts, and the rules by which a part number finds them."""
+"""The catalogue of part data: shipped families, a house's own, and what an intent file declares.
+
+Files are validated once (:mod:`.partfiles`, pydantic) and kept compiled as JSON, so that a warm start validates
+nothing again. Later sources win: declared parts over house folders over the shipped families.
+"""
 
 from __future__ import annotations
 
-import re
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import fields
 from functools import lru_cache
@@ -13,47 +16,53 @@ from ..errors import IntentError, Problem, RulePackError
 from ..quantities import nearest_names
 from ..resources import compiled, core_folder, gather, parse_toml
 from .partdata import PartData, Pinout
-
-# What may stand behind a base number: package, grade and temperature letters, tape codes, model tails.
-_TAIL = re.compile(r"^(?:[A-Z]{0,4}\d?[A-Z]{0,3})?(?:[-/_.#].*)?$")
-
-# Letters behind these numbers mean other silicon with other limits, not a grade.
-_OTHER_SILICON = {"LM358": "B", "LM2904": "B", "LM393": "B", "LM339": "B", "LM324": "B", "LM2902": "B"}
+from .partnames import is_suffix, plain_number
 
 
 class Catalogue:
-    """Part families that can be found by part number."""
+    """Part data by name."""
 
     def __init__(self, parts: Iterable[PartData]) -> None:
         self.parts: tuple[PartData, ...] = tuple(parts)
-        self._by_name: dict[str, PartData] = {}
+        self._numbers: dict[str, PartData] = {}
         for part in self.parts:
             for name in (part.name, *part.aliases):
-                self._by_name[name.upper()] = part
+                self._numbers[name.upper()] = part
+        self._lengths = sorted({len(each) for each in self._numbers}, reverse=True)
+        self._found: dict[str, PartData | None] = {}
 
     def find(self, name: str | None) -> PartData | None:
-        """Return the family of a part number: the longest known number that it begins with, or None."""
+        """Return the data of the family that a part number belongs to, by its longest known beginning.
+
+        >>> Catalogue([PartData("AD711", "op-amp", ("AD712",))]).find("ad712jrz").name
+        'AD711'
+        """
         if not name:
             return None
-        wanted = re.sub(r"[\s]", "", name.upper())
-        if wanted in self._by_name:
-            return self._by_name[wanted]
-        for length in range(len(wanted) - 1, 3, -1):
-            base = wanted[:length]
-            part = self._by_name.get(base)
-            if part is None:
-                continue
-            tail = wanted[length:]
-            if tail[0].isdigit() or not _TAIL.match(tail):
-                return None
-            if base in _OTHER_SILICON and tail.startswith(_OTHER_SILICON[base]):
-                return None
-            return part
-        return None
+        if name not in self._found:
+            self._found[name] = self._search(plain_number(name))
+        return self._found[name]
 
     def nearest(self, name: str) -> tuple[str, ...]:
         """Return known numbers near a name."""
-        return nearest_names(name, self._by_name)
+        return nearest_names(name, self._numbers)
+
+    def number_in(self, name: str) -> str | None:
+        """Return the family number that ``name`` begins with."""
+        plain = plain_number(name)
+        for length in self._lengths:
+            if plain[:length] in self._numbers and len(plain) >= length and is_suffix(plain[length:]):
+                return plain[:length]
+        return None
+
+    def _search(self, plain: str) -> PartData | None:
+        for length in self._lengths:
+            if len(plain) < length:
+                continue
+            found = self._numbers.get(plain[:length])
+            if found is not None and is_suffix(plain[length:]):
+                return found
+        return None
 
 
 def load_catalogue(folders: Sequence[Path] = (), declared: Mapping[str, Mapping[str, Any]] | None = None) -> Catalogue:
@@ -101,7 +110,7 @@ def _from_plain(data: Mapping[str, Any]) -> PartData:
         Pinout(each["package"], each["channels"], tuple((role, number) for role, number in each["roles"]))
         for each in data.get("pinouts", ())
     )
-    for name in ("aliases", "channels", "fixed_output_v", "from_memory"):
+    for name in ("aliases", "channels", "fixed_output_v", "from_memory", "pin_order"):
         if name in values:
             values[name] = tuple(values[name])
     known = {each.name for each in fields(PartData)}

@@ -1,373 +1,350 @@
-"""Hierarchy to flat parts: ``X1/R3`` on ``X1/n4``, values evaluated in the scope of their instance.
+"""Hierarchy to flat parts: ``X1/R3`` for a part inside an instance, ``X1/n4`` for its inner net.
 
-An instance that is an amplifier stays one part; its linear body, if it has one, travels with it for the solver.
-Nothing is dropped: what cannot be evaluated keeps its place with an unknown value and a problem that says so.
+Instances of amplifiers, rail sources and packages stay one part each, with a :class:`Clue` about them; every other
+definition is expanded in place, so that parts keep the order of the netlist. The number of elements is counted
+through all levels before anything is expanded. Nothing is lost: what cannot be expanded or evaluated stays as a part
+without a value, and a problem says why.
 """
 
 from __future__ import annotations
 
-import math
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
+from collections.abc import Iterable
+from dataclasses import dataclass, field, replace
 
-from ..errors import NetlistError, Problem
+from ..errors import Location, NetlistError, Problem
 from ..quantities import nearest_names
-from ..text.expressions import ExpressionError
-from ..text.netlist import ElementLine, ModelLine, Netlist, Subcircuit, Value
+from ..text.netlist import ElementLine, Netlist, Scope, Subcircuit
 from ..text.source import Limits
+from .assemble import Level, NetNames, build_part, opaque
+from .boards import BoardReader
 from .catalogue import Catalogue
-from .devices import DIRECT_KINDS, PIN_NAMES, board_kind, device_model, drive_of, read_marks
-from .macromodels import AmplifierShape, recognize_definition
-from .parts import Part, PartKind, Pin
-from .levels import Level
+from .clues import Clue
+from .definitions import BLOCK, Reading, read_definition
+from .packages import named_part
+from .parts import Part, PartKind
+from .scopes import Frame
 
-GROUND_NAMES = frozenset({"0", "gnd"})
-
-
-@dataclass(slots=True)
-class FlatAmplifier:
-    """An instance that is an amplifier by its definition: the part, its shape, the flat parts of its linear body."""
-
-    part: Part
-    shape: AmplifierShape
-    inner: tuple[Part, ...] = ()
+# A definition larger than this is a block of a design; no vendor's amplifier model comes near it.
+MOST_ELEMENTS_OF_A_MODEL = 600
 
 
 @dataclass(slots=True)
 class FlatCircuit:
-    """What flattening yields; ``nets`` maps a folded name to the spelling that stands for the net."""
+    """All parts of a netlist after flattening, with what was learned on the way."""
 
     parts: dict[str, Part] = field(default_factory=dict)
-    nets: dict[str, str] = field(default_factory=dict)
-    amplifiers: list[FlatAmplifier] = field(default_factory=list)
+    clues: dict[str, Clue] = field(default_factory=dict)
     problems: list[Problem] = field(default_factory=list)
-    ground: str | None = None
+    assumptions: list[str] = field(default_factory=list)
+    names: NetNames = field(default_factory=NetNames)
+    folded: dict[str, str] = field(default_factory=dict)
+
+    def add(self, part: Part) -> str:
+        """Keep a part; a designator that is taken gets a mark, and a problem says so. Returns the designator kept."""
+        key = part.designator.lower()
+        earlier = self.folded.get(key)
+        if earlier is not None:
+            first = self.parts[earlier]
+            count = 2
+            while f"{key}~{count}" in self.folded:
+                count += 1
+            self.problems.append(
+                Problem(
+                    "designator-twice",
+                    f"{part.designator} stands twice in the netlist; the first is at {first.location}",
+                    part.location,
+                    level="error",
+                    because="readers differ in which of the two they keep",
+                    cure="give one of them a designator of its own",
+                )
+            )
+            part = replace(part, designator=f"{part.designator}~{count}")
+            key = part.designator.lower()
+        self.folded[key] = part.designator
+        self.parts[part.designator] = part
+        return part.designator
 
 
-def flatten(netlist: Netlist, catalogue: Catalogue, limits: Limits | None = None) -> FlatCircuit:
-    """Expand a netlist.
+class Flattener:
+    """Expands one netlist."""
 
-    Raises
-    ------
-    NetlistError
-        When it would expand beyond the bound, a definition contains itself, or an instance does not fit its
-        definition; all such problems are collected.
-    """
-    worker = _Flattener(netlist, catalogue, limits or Limits())
-    worker.run()
-    return worker.flat
-
-
-class _Flattener:
-    def __init__(self, netlist: Netlist, catalogue: Catalogue, limits: Limits) -> None:
+    def __init__(self, netlist: Netlist, catalogue: Catalogue, limits: Limits | None = None) -> None:
         self.netlist = netlist
         self.catalogue = catalogue
-        self.limits = limits
-        self.flat = FlatCircuit(problems=[])
-        self.globals = {name.casefold() for name in netlist.globals}
-        self.is_board = netlist.style == "board"
-        self._shapes: dict[tuple[int, tuple[tuple[str, float], ...]], AmplifierShape | None] = {}
-        self._folded: dict[str, str] = {}
-        self._errors: list[Problem] = []
-        self._reported: set[str] = set()
+        self.limits = limits or Limits()
+        self.globals = frozenset(each.lower() for each in netlist.globals)
+        self._readings: dict[int, Reading] = {}
+        self._counts: dict[int, int] = {}
+        self._board = BoardReader(catalogue) if netlist.style == "board" else None
 
-    def run(self) -> None:
-        top = Level(self.netlist.scope)
-        total = self._count(top, self.netlist.scope.elements, {}, ())
-        if total > self.limits.elements_after_flattening:
+    def run(self) -> FlatCircuit:
+        """Return the flat circuit.
+
+        Raises
+        ------
+        NetlistError
+            When flattening would exceed a bound or a subcircuit holds itself.
+        """
+        top = Frame(self.netlist.scope)
+        self._count_first(top)
+        flat = FlatCircuit(names=NetNames(self.globals))
+        level = Level(flat.names, top, problems=flat.problems)
+        self._expand(self.netlist.scope, level, flat)
+        if self._board is not None:
+            flat.assumptions += self._board.assumptions
+        return flat
+
+    # counting
+
+    def _count_first(self, top: Frame) -> None:
+        total = self._count(top.scope, top, (), None)
+        bound = self.limits.elements_after_flattening
+        if total > bound:
+            heaviest = max(
+                (each for each in top.scope.elements if each.letter == "X"),
+                key=lambda each: self._weight(each, top),
+                default=None,
+            )
             raise NetlistError(
                 Problem(
                     "too-many-elements",
-                    f"the netlist expands to {total:.3g} elements, more than the bound of {self.limits.elements_after_flattening}",
-                    cure="raise elements_after_flattening in the call of read_netlist",
+                    f"flattening would give {total} elements, more than the bound of {bound}",
+                    heaviest.location if heaviest is not None else Location(self.netlist.path, 1),
+                    cure="raise elements_after_flattening in the limits of the call, if the netlist is meant so",
                 )
             )
-        for element in self.netlist.scope.elements:
-            self._element(element, top, "", {}, self.flat.parts)
-        if self._errors:
-            raise NetlistError([*self._errors, *self.netlist.problems])
 
-    def _count(
-        self, level: Level, elements: Sequence[ElementLine], known: dict[int, float], path: tuple[str, ...]
-    ) -> float:
-        total = 0.0
-        for element in elements:
-            found = level.subcircuit(element.model) if element.letter == "X" and element.model else None
+    def _weight(self, element: ElementLine, frame: Frame) -> int:
+        found = frame.subcircuit(element.model or "")
+        return self._counts.get(id(found[0]), 1) if found is not None else 1
+
+    def _count(self, scope: Scope, frame: Frame, path: tuple[int, ...], location: Location | None) -> int:
+        if len(path) > self.limits.subcircuit_depth:
+            raise NetlistError(
+                Problem(
+                    "nested-too-deep",
+                    f"instances nested deeper than the bound of {self.limits.subcircuit_depth}",
+                    location,
+                    cure="raise subcircuit_depth in the limits of the call, if the netlist is meant so",
+                )
+            )
+        total = 0
+        for element in scope.elements:
+            total += 1
+            if element.letter != "X" or element.model is None:
+                continue
+            found = frame.subcircuit(element.model)
             if found is None:
-                total += 1
                 continue
             definition, home = found
-            if definition.name.lower() in path:
-                circle = " -> ".join([*path, definition.name])
+            key = id(definition)
+            if key in path:
                 raise NetlistError(
                     Problem(
-                        "subcircuit-contains-itself",
-                        f"subcircuit `{definition.name}` contains itself: {circle}",
+                        "subcircuit-circle",
+                        f"subcircuit `{definition.name}` contains itself",
                         element.location,
+                        cure=f"remove {element.designator} from the definition, or name another subcircuit there",
                     )
                 )
-            key = id(definition)
-            if key not in known:
-                inner = Level(definition.scope, home)
-                known[key] = self._count(inner, definition.scope.elements, known, (*path, definition.name.lower()))
-            total += max(1.0, known[key])
+            if key not in self._counts:
+                inner = Frame(definition.scope, home)
+                self._counts[key] = self._count(definition.scope, inner, (*path, key), element.location)
+            total += self._counts[key]
         return total
 
-    # nets -----------------------------------------------------------------------------------------------------------
+    # expanding
 
-    def _net(self, name: str, prefix: str, ports: dict[str, str]) -> str:
-        folded = name.casefold()
-        if folded in GROUND_NAMES:
-            if self.flat.ground is None:
-                self.flat.ground = name
-                self.flat.nets.setdefault("0", name)
-            return self.flat.ground
-        if folded in ports:
-            return ports[folded]
-        if prefix and folded not in self.globals:
-            name = f"{prefix}{name}"
-            folded = name.casefold()
-        return self.flat.nets.setdefault(folded, name)
+    def _expand(self, scope: Scope, level: Level, flat: FlatCircuit) -> None:
+        board = self._board
+        for element in scope.elements:
+            if element.letter == "X":
+                self._instance(element, level, flat)
+            elif board is not None and not level.prefix:
+                for part, clue in board.read(element, level):
+                    kept = flat.add(part)
+                    if clue is not None and part.is_fitted:
+                        flat.clues[kept] = replace(clue, designator=kept)
+            elif element.letter == "U":
+                self._named_part(element, level, flat)
+            else:
+                flat.add(build_part(element, level))
 
-    # elements -------------------------------------------------------------------------------------------------------
-
-    def _element(
-        self, element: ElementLine, level: Level, prefix: str, ports: dict[str, str], target: dict[str, Part]
-    ) -> None:
-        designator = f"{prefix}{element.designator}"
-        folded = designator.casefold()
-        if target is self.flat.parts:
-            if folded in self._folded:
-                first = self.flat.parts[self._folded[folded]].location
-                self._errors.append(
-                    Problem(
-                        "designator-twice",
-                        f"designator {designator} is used twice; the first is at {first}",
-                        element.location,
-                        cure="renumber one of them",
-                    )
-                )
-                return
-            self._folded[folded] = designator
-        nets = tuple(self._net(each, prefix, ports) for each in element.nets)
-        if element.letter == "X" and not self.is_board:
-            self._instance(element, designator, nets, level, prefix, target)
-            return
-        if self.is_board or element.letter == "U":
-            kind = board_kind(element)
-            if kind is not None:
-                target[designator] = self._package(element, designator, nets, kind, level)
-                return
-        part = self._plain(element, designator, nets, level, prefix, ports)
-        target[designator] = part
-
-    def _plain(
-        self,
-        element: ElementLine,
-        designator: str,
-        nets: tuple[str, ...],
-        level: Level,
-        prefix: str,
-        ports: dict[str, str],
-    ) -> Part:
-        value_of = self._reader(element, designator, level)
-        kind = DIRECT_KINDS.get(element.letter, PartKind.OPAQUE)
-        names = PIN_NAMES.get(kind, ())
-        pins = tuple(Pin(names[index] if index < len(names) else str(index + 1), net) for index, net in enumerate(nets))
-        params = {name: number for name, each in element.params.items() if (number := value_of(each)) is not None}
-        model = device_model(element, level, value_of) if element.model is not None else None
-        if element.model is not None and model is None and kind in _NEEDS_MODEL:
-            self._missing_model(element, level)
-        value = value_of(element.value) if element.value is not None else None
-        multiplier = params.get("m", 1.0)
-        if multiplier > 0 and multiplier != 1.0 and value is not None:
-            value = value / multiplier if kind in {PartKind.RESISTOR, PartKind.INDUCTOR} else value * multiplier
-        if value is None and model is not None and kind in {PartKind.RESISTOR, PartKind.CAPACITOR, PartKind.INDUCTOR}:
-            value = model.params.get(element.letter.lower())
-        marks = read_marks(element)
-        control: tuple[str, ...] = ()
-        coefficients: tuple[float, ...] = ()
-        expression = None
-        if element.control is not None:
-            written = element.control
-            control = tuple(self._net(each, prefix, ports) for each in written.nets)
-            control += tuple(f"{prefix}{each}" for each in written.sources)
-            coefficients = tuple(value_of(each) or 0.0 for each in written.coefficients)
-            expression = written.expression.text if written.expression is not None else None
-            if written.form not in {"linear", "poly", "switch"}:
-                kind = PartKind.BEHAVIOURAL
-            elif written.form == "poly" and written.output is None:
-                value, kind = _linear_poly(kind, coefficients, value)
-        drive = drive_of(element, value_of) if element.excitation is not None else None
-        if drive is not None:
-            value = drive.dc
-        return Part(
-            designator=designator,
-            kind=kind,
-            pins=pins,
-            location=element.location,
-            value=value,
-            model=model,
-            part_name=element.model,
-            params=params,
-            drive=drive,
-            control=control or tuple(f"{prefix}{each}" for each in element.coupled),
-            coefficients=coefficients,
-            expression=expression,
-            tolerance=marks.tolerance if marks.tolerance is not None else _fraction(params.get("tol")),
-            rating_v=marks.rating_v,
-            rating_w=marks.rating_w,
-            marks=element.marks,
-            is_fitted=marks.is_fitted,
-        )
-
-    def _reader(self, element: ElementLine, designator: str, level: Level) -> Callable[[Value | None], float | None]:
-        def read(written: Value | None) -> float | None:
-            if written is None:
-                return None
-            try:
-                number = level.value(written)
-            except ExpressionError as trouble:
-                self._report(
-                    Problem(
-                        trouble.kind if trouble.kind != "expression" else "value-not-computed",
-                        f"{designator}: {trouble}",
-                        element.location,
-                        level="warning",
-                        because="the part is kept with an unknown value",
-                    )
-                )
-                return None
-            return number if math.isfinite(number) else None
-
-        return read
-
-    def _report(self, problem: Problem) -> None:
-        mark = f"{problem.kind} {problem.what}"
-        if mark not in self._reported:
-            self._reported.add(mark)
-            self.flat.problems.append(problem)
-
-    def _missing_model(self, element: ElementLine, level: Level) -> None:
-        known = [each.name for each in _models(level)]
-        self._report(
-            Problem(
-                "model-undefined",
-                f"{element.designator}: no model `{element.model}` is defined",
-                element.location,
-                level="warning",
-                because="typical values of its kind are used",
-                nearest=nearest_names(element.model or "", known),
-            )
-        )
-
-    # instances ------------------------------------------------------------------------------------------------------
-
-    def _package(
-        self, element: ElementLine, designator: str, nets: tuple[str, ...], kind: PartKind, level: Level
-    ) -> Part:
-        marks = read_marks(element)
-        return Part(
-            designator=designator,
-            kind=kind,
-            pins=tuple(Pin(str(index + 1), net) for index, net in enumerate(nets)),
-            location=element.location,
-            part_name=element.model,
-            marks=element.marks,
-            is_fitted=marks.is_fitted,
-        )
-
-    def _instance(
-        self,
-        element: ElementLine,
-        designator: str,
-        nets: tuple[str, ...],
-        level: Level,
-        prefix: str,
-        target: dict[str, Part],
-    ) -> None:
-        found = level.subcircuit(element.model) if element.model else None
+    def _instance(self, element: ElementLine, level: Level, flat: FlatCircuit) -> None:
+        found = level.frame.subcircuit(element.model) if element.model is not None else None
         if found is None:
-            known = self.catalogue.find(element.model)
-            if known is None:
-                names = [name for each in _levels(level) for name in each.scope.subcircuits]
-                self._report(
-                    Problem(
-                        "subcircuit-undefined",
-                        f"{designator}: no subcircuit `{element.model}` is defined",
-                        element.location,
-                        level="warning",
-                        because="the instance is kept as an opaque part",
-                        nearest=nearest_names(element.model or "", names),
-                    )
-                )
-            target[designator] = self._package(element, designator, nets, PartKind.OPAQUE, level)
+            self._undefined(element, level, flat)
             return
         definition, home = found
-        if len(nets) != len(definition.ports):
-            self._errors.append(
+        if len(element.nets) != len(definition.ports):
+            flat.problems.append(
                 Problem(
                     "pin-count-differs",
-                    f"{designator} has {len(nets)} nets, subcircuit `{definition.name}` has {len(definition.ports)} pins",
+                    f"{level.prefix}{element.designator} has {len(element.nets)} nets, its definition "
+                    f"`{definition.name}` has {len(definition.ports)} pins ({' '.join(definition.ports)})",
                     element.location,
-                    expected=f"{' '.join(definition.ports)} (defined at {definition.location})",
+                    level="error",
+                    because=f"`{definition.name}` is defined at {definition.location}",
+                    cure="give one net for each pin, in the order of the definition",
                 )
             )
+            flat.add(opaque(element, level))
             return
-        given = {}
-        read = self._reader(element, designator, level)
-        for name, written in element.params.items():
-            number = read(written)
-            if number is not None:
-                given[name] = number
-        inner = Level(definition.scope, home, given=given, defaults=definition.params)
-        key = (id(definition), tuple(sorted(given.items())))
-        if key not in self._shapes:
-            self._shapes[key] = recognize_definition(definition, inner, self.catalogue)
-        shape = self._shapes[key]
-        local = {port.casefold(): net for port, net in zip(definition.ports, nets, strict=True)}
-        if shape is not None:
-            pins = tuple(Pin(role, net) for role, net in zip(shape.roles, nets, strict=True))
-            part = Part(designator, PartKind.AMPLIFIER, pins, element.location, part_name=element.model, params=given)
-            target[designator] = part
-            body = self._body(definition, inner, designator, local) if shape.is_linear else ()
-            self.flat.amplifiers.append(FlatAmplifier(part, shape, body))
+        given: dict[str, float] = {}
+        for name, value in element.params.items():
+            evaluated = level.value(element, value)
+            if evaluated is not None:
+                given[name] = evaluated
+        reading = self._read(definition, home, flat)
+        if reading.form == "block":
+            self._expand(definition.scope, self._inside(element, definition, home, given, level), flat)
             return
-        for each in definition.scope.elements:
-            self._element(each, inner, f"{designator}/", local, target)
+        inner: tuple[Part, ...] = ()
+        gain = None
+        if reading.has_linear_body:
+            inner = self._body(element, definition, home, given, level, flat)
+            gain = self._gain(reading, definition, inner, element, level)
+        self._keep_opaque(element, level, flat, reading, definition.ports, inner, gain)
 
-    def _body(self, definition: Subcircuit, level: Level, designator: str, local: dict[str, str]) -> tuple[Part, ...]:
-        held: dict[str, Part] = {}
-        known = dict(self.flat.nets)
-        for each in definition.scope.elements:
-            self._element(each, level, f"{designator}/", local, held)
-        self.flat.nets = known
-        return tuple(held.values())
+    def _inside(
+        self, element: ElementLine, definition: Subcircuit, home: Frame, given: dict[str, float], level: Level
+    ) -> Level:
+        multiplier = level.multiplier * given.get("m", 1.0) if "m" not in definition.params else level.multiplier
+        frame = Frame(definition.scope, home, definition.params, given)
+        ports = {port.lower(): level.net(net) for port, net in zip(definition.ports, element.nets, strict=True)}
+        prefix = f"{level.prefix}{element.designator}/"
+        return Level(level.names, frame, prefix, ports, multiplier, level.problems)
 
+    def _body(
+        self,
+        element: ElementLine,
+        definition: Subcircuit,
+        home: Frame,
+        given: dict[str, float],
+        level: Level,
+        flat: FlatCircuit,
+    ) -> tuple[Part, ...]:
+        own = FlatCircuit(names=flat.names, problems=flat.problems)
+        self._expand(definition.scope, self._inside(element, definition, home, given, level), own)
+        return tuple(own.parts.values())
 
-_NEEDS_MODEL = {PartKind.DIODE, PartKind.BJT, PartKind.JFET, PartKind.MOSFET}
+    def _gain(
+        self, reading: Reading, definition: Subcircuit, inner: tuple[Part, ...], element: ElementLine, level: Level
+    ) -> float | None:
+        """Open-loop gain of this instance: that of the definition, or computed anew where parameters are given."""
+        if reading.body is not None and not element.params:
+            return reading.body.gain
+        from .bodies import solve_body
 
+        if not reading.channels:
+            return None
+        # Ports that share a net (a follower) cannot be driven apart, so the body is solved with nets of its own.
+        roles = reading.channels[0]
+        ports = {port: f"\0{index}" for index, port in enumerate(definition.ports)}
+        frame_level = Level(NetNames(self.globals), level.frame)
+        own = FlatCircuit(names=frame_level.names)
+        found = level.frame.subcircuit(definition.name)
+        if found is None:
+            return None
+        given = {name: value for name, value in level.params(element).items()}
+        inside = Level(
+            own.names,
+            Frame(definition.scope, found[1], definition.params, given),
+            "",
+            {port.lower(): net for port, net in ports.items()},
+        )
+        self._expand(definition.scope, inside, own)
+        by_role = {role: ports[definition.ports[index]] for role, index in roles.items()}
+        drives = {net: 0.0 for role, net in by_role.items() if role != "OUT"}
+        drives[by_role["IN+"]], drives[by_role["IN-"]] = 0.5, -0.5
+        return solve_body(tuple(own.parts.values()), drives, by_role["OUT"], own.names.ground)
 
-def _fraction(percent: float | None) -> float | None:
-    return None if percent is None else percent / 100 if percent >= 0.5 else percent
+    def _read(self, definition: Subcircuit, home: Frame, flat: FlatCircuit) -> Reading:
+        key = id(definition)
+        reading = self._readings.get(key)
+        if reading is None:
+            if self._counts.get(key, len(definition.scope.elements)) > MOST_ELEMENTS_OF_A_MODEL:
+                reading = BLOCK
+            else:
+                own = FlatCircuit(names=NetNames(self.globals))
+                frame = Frame(definition.scope, home, definition.params)
+                ports = {each.lower(): own.names.canonical(each) for each in definition.ports}
+                self._expand(definition.scope, Level(own.names, frame, "", ports), own)
+                reading = read_definition(
+                    definition, tuple(own.parts.values()), own.clues, self.catalogue, own.names.ground
+                )
+            self._readings[key] = reading
+            if reading.disagreement:
+                flat.problems.append(
+                    Problem("pin-names-contradict", reading.disagreement, definition.location, level="warning")
+                )
+        return reading
 
+    def _keep_opaque(
+        self,
+        element: ElementLine,
+        level: Level,
+        flat: FlatCircuit,
+        reading: Reading,
+        ports: Iterable[str],
+        inner: tuple[Part, ...],
+        gain: float | None,
+    ) -> None:
+        names = tuple(ports)
+        roles = list(names)
+        if len(reading.channels) == 1:
+            for role, index in reading.channels[0].items():
+                roles[index] = role
+        kind = PartKind.REGULATOR if reading.form == "rail source" else PartKind.AMPLIFIER
+        part = opaque(element, level, kind, roles)
+        kept = flat.add(part)
+        if not part.is_fitted:
+            return
+        flat.clues[kept] = Clue(
+            kept,
+            element.location,
+            part.nets,
+            element.model,
+            names,
+            reading.channels,
+            reading.orders,
+            reading.data,
+            reading.evidence,
+            gain,
+            inner,
+            reading.is_certain,
+        )
 
-def _linear_poly(kind: PartKind, coefficients: Sequence[float], value: float | None) -> tuple[float | None, PartKind]:
-    """Keep a polynomial of one control with a single first-order term as a plain controlled source."""
-    if len(coefficients) == 2 and coefficients[0] == 0:
-        return coefficients[1], kind
-    if len(coefficients) == 1:
-        return coefficients[0], kind
-    return value, PartKind.BEHAVIOURAL
+    def _undefined(self, element: ElementLine, level: Level, flat: FlatCircuit) -> None:
+        data = self.catalogue.find(element.model)
+        if data is None:
+            name = element.model or ""
+            known = [each.name for each in self._visible(level.frame)]
+            flat.problems.append(
+                Problem(
+                    "subcircuit-undefined",
+                    f"{level.prefix}{element.designator}: no .subckt defines `{name}`",
+                    element.location,
+                    level="warning" if self._board is not None else "error",
+                    because="the part is kept with its pins, but nothing is computed through it",
+                    cure="include the library that defines it, or declare it under [parts] in review.toml",
+                    nearest=nearest_names(name, known),
+                )
+            )
+        self._named_part(element, level, flat)
 
+    def _visible(self, frame: Frame) -> Iterable[Subcircuit]:
+        each: Frame | None = frame
+        while each is not None:
+            yield from each.scope.subcircuits.values()
+            each = each.parent
 
-def _levels(level: Level | None) -> list[Level]:
-    found = []
-    while level is not None:
-        found.append(level)
-        level = level.outer
-    return found
-
-
-def _models(level: Level) -> list[ModelLine]:
-    return [model for each in _levels(level) for model in each.scope.models.values()]
+    def _named_part(self, element: ElementLine, level: Level, flat: FlatCircuit) -> None:
+        """Keep a part that only its name describes: a U line, or an instance without definition."""
+        data = self.catalogue.find(element.model)
+        part, clue = named_part(
+            element, level, data, is_package_line=element.letter == "U", is_board=self._board is not None
+        )
+        kept = flat.add(part)
+        if clue is not None and part.is_fitted:
+            flat.clues[kept] = replace(clue, designator=kept)

@@ -1,37 +1,50 @@
-"""The circuit: parts and nets as the two sides of a graph, each pin an edge with its name.
+"""The circuit: parts and nets as the two sides of one graph, each pin an edge, with the questions that rooms ask.
 
-``graph`` is a networkx MultiGraph whose nodes are ``("part", designator)`` and ``("net", name)``; edge keys are pin
-names. The circuit never changes: :meth:`Circuit.with_changes` makes another one.
+Nets and designators are compared without regard to letter case; the first spelling stands for all. The networkx graph
+is built on first use; neighbourhood questions are answered from the same adjacency and cost no more than the degree of
+the net. What recognition finds (rails, amplifiers, signals) is computed once per circuit.
 """
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Mapping
-from functools import cached_property
-from typing import TYPE_CHECKING
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from types import MappingProxyType
+from typing import TYPE_CHECKING, Any
 
 from ..errors import Problem
+from .clues import Clue
 from .parts import Amplifier, Part, PartKind, Rail, Signal, Undetermined
 
 if TYPE_CHECKING:
     import networkx
 
-HUB_PINS = 16  # a net with more pins is a rail in all but name: nothing walks through it
+    from ..text import Intent
+    from .catalogue import Catalogue
 
-LINK_OHM = 1e-3  # a resistor below this is a link
+HUB_PINS = 16
+"""A net with more pins is a rail in all but name: nothing walks through it."""
+
+LINK_OHM = 1e-3
+"""A resistor below this is a link."""
+
+
+@dataclass(frozen=True, slots=True)
+class Findings:
+    """What recognition found in a circuit."""
+
+    grounds: frozenset[str]
+    rails: Mapping[str, Rail]
+    held: Mapping[str, float | None]
+    amplifiers: tuple[Amplifier, ...]
+    undetermined: tuple[Undetermined, ...]
+    signals: Mapping[str, Signal]
+    problems: tuple[Problem, ...] = ()
+    assumptions: tuple[str, ...] = ()
 
 
 class Circuit:
-    """Parts, nets, rails, signals and amplifiers of one netlist.
-
-    Parameters
-    ----------
-    parts
-        All parts by designator, in the order of the netlist.
-    annotate
-        Finds rails, signals, amplifiers and problems of a bare circuit; kept so that a changed circuit can be
-        annotated again.
-    """
+    """A flat circuit; read-only. Changed copies come from :meth:`with_changes`."""
 
     def __init__(
         self,
@@ -39,153 +52,258 @@ class Circuit:
         title: str,
         path: str,
         parts: Mapping[str, Part],
+        clues: Mapping[str, Clue],
         ground: str | None,
-        annotate: Callable[[Circuit], None],
+        catalogue: Catalogue,
+        intent: Intent | None = None,
+        style: str = "simulation",
+        problems: tuple[Problem, ...] = (),
+        assumptions: tuple[str, ...] = (),
+        reasons: Mapping[str, str] | None = None,
     ) -> None:
         self.title = title
         self.path = path
-        self.parts: Mapping[str, Part] = dict(parts)
-        self.ground = ground
-        self.rails: Mapping[str, Rail] = {}
-        self.signals: Mapping[str, Signal] = {}
-        self.amplifiers: tuple[Amplifier, ...] = ()
-        self.undetermined: tuple[Undetermined, ...] = ()
-        self.problems: tuple[Problem, ...] = ()
-        self.assumptions: tuple[str, ...] = ()
-        self._annotate = annotate
+        self.style = style
+        self.parts: Mapping[str, Part] = MappingProxyType(dict(parts))
+        self.catalogue = catalogue
+        self.intent = intent
+        self.clues = clues
+        self.reasons: Mapping[str, str] = reasons or {}
+        self._ground = ground
+        self._problems = problems
+        self._assumptions = assumptions
         self._pins: dict[str, list[tuple[str, str]]] = {}
-        self._held: set[str] = set()
-        for designator, part in self.parts.items():
+        for part in self.parts.values():
             if not part.is_fitted:
                 continue
             for pin in part.pins:
-                self._pins.setdefault(pin.net, []).append((designator, pin.name))
+                held = self._pins.get(pin.net)
+                if held is None:
+                    self._pins[pin.net] = [(part.designator, pin.name)]
+                else:
+                    held.append((part.designator, pin.name))
         if ground is not None:
             self._pins.setdefault(ground, [])
-        annotate(self)
-        self._held = self._find_held()
+        self._folded_nets: dict[str, str] | None = None
+        self._folded_parts: dict[str, str] | None = None
+        self._graph: Any = None
+        self._findings: Findings | None = None
+        self._outputs: dict[str, tuple[Amplifier, ...]] | None = None
+        self._by_name: dict[str, Amplifier] | None = None
 
-    # nets and parts --------------------------------------------------------------------------------------------------
+    # structure
+
+    @property
+    def graph(self) -> networkx.MultiGraph:
+        """The two-sided graph: nodes ``("part", designator)`` and ``("net", name)``, one edge per pin, key = pin name."""
+        if self._graph is None:
+            import networkx
+
+            graph = networkx.MultiGraph()
+            graph.add_nodes_from(("part", each) for each in self.parts)
+            graph.add_nodes_from(("net", each) for each in self._pins)
+            graph.add_edges_from(
+                (("part", part.designator), ("net", pin.net), pin.name, {})
+                for part in self.parts.values()
+                if part.is_fitted
+                for pin in part.pins
+            )
+            self._graph = networkx.freeze(graph)
+        return self._graph
 
     @property
     def nets(self) -> tuple[str, ...]:
-        """All nets, in the order of their first pin."""
+        """All nets, in order of first mention."""
         return tuple(self._pins)
 
     def pins_on(self, net: str) -> tuple[tuple[str, str], ...]:
-        """Return (designator, pin name) of each pin on a net."""
-        return tuple(self._pins.get(net, ()))
+        """Return the pins on a net as (designator, pin name), in netlist order."""
+        found = self._pins.get(net)
+        if found is None:
+            other = self.net(net)
+            found = self._pins.get(other, []) if other is not None else []
+        return tuple(found)
 
     def parts_on(self, net: str) -> tuple[Part, ...]:
-        """Return the parts on a net, each once."""
-        return tuple(
-            self.parts[each] for each in dict.fromkeys(designator for designator, _ in self._pins.get(net, ()))
-        )
+        """Return the parts with a pin on a net, each once, in netlist order."""
+        return tuple(self.parts[each] for each in dict.fromkeys(name for name, _ in self.pins_on(net)))
 
     def degree(self, net: str) -> int:
         """Return the number of pins on a net."""
-        return len(self._pins.get(net, ()))
+        found = self._pins.get(net)
+        return len(found) if found is not None else len(self.pins_on(net))
 
     def part(self, designator: str) -> Part | None:
-        """Return a part by its designator in any letter case."""
+        """Return the part of a designator in any spelling."""
         found = self.parts.get(designator)
-        return found if found is not None else self._folded_parts.get(designator.casefold())
+        if found is None:
+            if self._folded_parts is None:
+                self._folded_parts = {each.lower(): each for each in self.parts}
+            known = self._folded_parts.get(designator.lower())
+            found = self.parts[known] if known is not None else None
+        return found
 
     def net(self, name: str) -> str | None:
-        """Return the spelling that stands for a net name in any letter case; ground answers to 0 and GND."""
+        """Return the circuit's spelling of a net name; None when there is no such net."""
         if name in self._pins:
             return name
-        if name.casefold() in {"0", "gnd"}:
-            return self.ground
-        return self._folded_nets.get(name.casefold())
+        if self._folded_nets is None:
+            self._folded_nets = {each.lower(): each for each in self._pins}
+        key = name.lower()
+        if key in {"0", "gnd"}:
+            return self._ground
+        return self._folded_nets.get(key)
 
-    @cached_property
-    def _folded_parts(self) -> dict[str, Part]:
-        return {designator.casefold(): part for designator, part in self.parts.items()}
+    # what recognition found
 
-    @cached_property
-    def _folded_nets(self) -> dict[str, str]:
-        return {net.casefold(): net for net in self._pins}
+    def _found(self) -> Findings:
+        if self._findings is None:
+            from .recognize import recognize
 
-    # questions about nets --------------------------------------------------------------------------------------------
+            self._findings = recognize(self)
+        return self._findings
 
-    def is_ground(self, net: str | None) -> bool:
-        """True for the ground net."""
-        return net is not None and net == self.ground
+    @property
+    def ground(self) -> str | None:
+        """The net at 0 V by definition; None when the netlist has none."""
+        return self._ground
 
-    def is_rail(self, net: str | None) -> bool:
-        """True for a rail (ground is none)."""
-        return net in self.rails
+    @property
+    def grounds(self) -> frozenset[str]:
+        """All nets taken as ground: the ground net and separate ones such as AGND."""
+        return self._found().grounds
 
-    def is_held(self, net: str) -> bool:
-        """True when an ideal voltage source holds the net against ground, through other held nets if need be."""
-        return net in self._held
+    @property
+    def rails(self) -> Mapping[str, Rail]:
+        """Rails by net; ground is none of them."""
+        return self._found().rails
 
-    def is_stiff(self, net: str | None) -> bool:
-        """True for ground, rails and nets held by a source: nothing that hangs on them moves them."""
-        return net is not None and (net == self.ground or net in self.rails or net in self._held)
+    @property
+    def held(self) -> Mapping[str, float | None]:
+        """Nets that ideal voltage sources hold against ground, with their DC voltage where it is known (V)."""
+        return self._found().held
 
-    def is_hub(self, net: str) -> bool:
-        """True for nets with so many pins that nothing should walk through them."""
-        return len(self._pins.get(net, ())) > HUB_PINS
+    @property
+    def amplifiers(self) -> tuple[Amplifier, ...]:
+        """All amplifier channels, in netlist order."""
+        return self._found().amplifiers
+
+    @property
+    def undetermined(self) -> tuple[Undetermined, ...]:
+        """Parts that may be amplifiers but whose pin roles are not known."""
+        return self._found().undetermined
+
+    @property
+    def signals(self) -> Mapping[str, Signal]:
+        """Signals by the net that they enter on."""
+        return self._found().signals
+
+    @property
+    def problems(self) -> tuple[Problem, ...]:
+        """What is wrong with the netlist as a circuit; reading went on after each."""
+        return (*self._problems, *self._found().problems)
+
+    @property
+    def assumptions(self) -> tuple[str, ...]:
+        """What had to be assumed, one sentence each."""
+        return (*self._assumptions, *self._found().assumptions)
 
     def amplifiers_at(self, net: str) -> tuple[Amplifier, ...]:
-        """Return the amplifiers whose output is the net."""
-        return tuple(self._outputs.get(net, ()))
+        """Return the amplifiers whose output is this net."""
+        if self._outputs is None:
+            outputs: dict[str, tuple[Amplifier, ...]] = {}
+            for each in self.amplifiers:
+                outputs[each.output] = (*outputs.get(each.output, ()), each)
+            self._outputs = outputs
+        return self._outputs.get(net, ())
+
+    amplifier_at = amplifiers_at
 
     def amplifier(self, name: str) -> Amplifier | None:
         """Return an amplifier by name in any letter case."""
-        wanted = name.casefold()
-        return next((each for each in self.amplifiers if each.name.casefold() == wanted), None)
+        if self._by_name is None:
+            self._by_name = {each.name.lower(): each for each in self.amplifiers}
+        return self._by_name.get(name.lower())
 
-    @cached_property
-    def _outputs(self) -> dict[str, list[Amplifier]]:
-        found: dict[str, list[Amplifier]] = {}
-        for amplifier in self.amplifiers:
-            found.setdefault(amplifier.output, []).append(amplifier)
-        return found
+    def is_ground(self, net: str | None) -> bool:
+        """True for ground and for separate grounds such as AGND."""
+        return net is not None and (net == self._ground or net in self.grounds)
 
-    def _find_held(self) -> set[str]:
-        held: set[str] = set()
-        if self.ground is None:
-            return held
-        waiting = [self.ground]
-        seen = {self.ground}
-        while waiting:
-            net = waiting.pop()
-            for designator, _ in self._pins.get(net, ()):
-                part = self.parts[designator]
-                if part.kind is not PartKind.VOLTAGE_SOURCE or len(part.pins) != 2:
-                    continue
-                other = part.pins[1].net if part.pins[0].net == net else part.pins[0].net
-                if other not in seen:
-                    seen.add(other)
-                    held.add(other)
-                    waiting.append(other)
-        return held
+    def is_rail(self, net: str | None) -> bool:
+        """True for a rail; ground is none."""
+        return net is not None and net in self.rails
 
-    # graph and changes -----------------------------------------------------------------------------------------------
+    def is_held(self, net: str) -> bool:
+        """True when ideal voltage sources hold the net against ground."""
+        return net in self._found().held
 
-    @cached_property
-    def graph(self) -> networkx.MultiGraph:
-        """The two-sided graph of parts and nets."""
-        import networkx
+    def is_stiff(self, net: str | None) -> bool:
+        """True for ground, rails and nets held by ideal sources: nothing that hangs on them moves them."""
+        if net is None:
+            return False
+        found = self._found()
+        return net == self._ground or net in found.grounds or net in found.rails or net in found.held
 
-        graph = networkx.MultiGraph()
-        graph.add_nodes_from(("net", net) for net in self._pins)
-        graph.add_nodes_from(("part", designator) for designator in self.parts)
-        graph.add_edges_from(
-            (("part", designator), ("net", net), pin) for net, pins in self._pins.items() for designator, pin in pins
-        )
-        return graph
+    def is_hub(self, net: str) -> bool:
+        """True for nets with so many pins that no search walks through them."""
+        return self.degree(net) > HUB_PINS
+
+    # changed copies
 
     def with_changes(
-        self, *, replace: Iterable[Part] = (), add: Iterable[Part] = (), remove: Iterable[str] = ()
+        self, replace: Iterable[Part] = (), add: Iterable[Part] = (), remove: Iterable[str] = ()
     ) -> Circuit:
-        """Return a circuit with parts replaced, added or removed; rails and amplifiers are found again."""
-        gone = set(remove)
-        changed = {part.designator: part for part in replace}
-        parts = {name: changed.get(name, part) for name, part in self.parts.items() if name not in gone}
-        for part in add:
-            parts[part.designator] = part
-        return Circuit(title=self.title, path=self.path, parts=parts, ground=self.ground, annotate=self._annotate)
+        """Return a circuit with parts replaced (by designator), added or removed; this one stays as it is.
+
+        A change of values alone keeps what recognition found; any other makes it look again.
+
+        Raises
+        ------
+        KeyError
+            When a part to replace or remove is not there, or one to add is.
+        """
+        parts = dict(self.parts)
+        values_only = True
+        for each in replace:
+            old = parts[each.designator]
+            parts[each.designator] = each
+            values_only = values_only and old.pins == each.pins and old.kind is each.kind and _is_plain(old, each)
+        for name in remove:
+            del parts[self._known(name)]
+            values_only = False
+        for each in add:
+            if self.part(each.designator) is not None and each.designator in parts:
+                raise KeyError(each.designator)
+            parts[each.designator] = each
+            values_only = False
+        changed = Circuit(
+            title=self.title,
+            path=self.path,
+            parts=parts,
+            clues={name: clue for name, clue in self.clues.items() if name in parts},
+            ground=self._ground,
+            catalogue=self.catalogue,
+            intent=self.intent,
+            style=self.style,
+            problems=self._problems,
+            assumptions=self._assumptions,
+            reasons=self.reasons,
+        )
+        if values_only:
+            changed._findings = self._findings
+        return changed
+
+    def _known(self, name: str) -> str:
+        found = self.part(name)
+        if found is None:
+            raise KeyError(name)
+        return found.designator
+
+
+def _is_plain(old: Part, new: Part) -> bool:
+    """True for a changed value that moves no rail: capacitors, and resistors that stay above or below 100 Ω."""
+    if old.kind in (PartKind.CAPACITOR, PartKind.INDUCTOR):
+        return True
+    if old.kind is not PartKind.RESISTOR or old.value is None or new.value is None:
+        return False
+    return (old.value > 100) == (new.value > 100)

@@ -25,7 +25,13 @@ class Pinout:
 
 @dataclass(frozen=True, slots=True)
 class PartData:
-    """One part family."""
+    """One part family.
+
+    ``channels_by_name`` tells the members of a family that is numbered by channel count apart, ``output_by_name`` the
+    output voltage of a fixed regulator or reference by its number (V). ``pin_order`` is the order of the nets on an
+    instance line where it is declared. ``gain_formula`` is in ``rg`` (ohm); ``fixed_gain`` is that of a one-chip
+    amplifier without gain resistor.
+    """
 
     name: str
     kind: str
@@ -69,6 +75,19 @@ class PartData:
     from_memory: tuple[str, ...] = ()
     notes: str = ""
     extra: Mapping[str, float] = field(default_factory=dict)
+    channels_by_name: Mapping[str, int] = field(default_factory=dict)
+    output_by_name: Mapping[str, float] = field(default_factory=dict)
+    pin_order: tuple[str, ...] = ()
+    fixed_gain: float | None = None
+
+    def channels_of(self, name: str) -> int | None:
+        """Return how many amplifiers a package of this name holds; None when the name does not tell."""
+        if len(self.channels) == 1:
+            return self.channels[0]
+        from .partnames import longest_prefix
+
+        member = longest_prefix(name, self.channels_by_name)
+        return None if member is None else self.channels_by_name[member]
 
     def is_read(self, field_name: str) -> bool:
         """True when the value of ``field_name`` was read in the named source rather than recalled from memory."""

@@ -76,7 +76,8 @@ class Part:
     """One part after flattening.
 
     ``value`` is in ohm, farad, henry, volt, ampere or the gain of a controlled source; ``None`` when the netlist does
-    not give it. ``control`` names controlling nets (E, G) or sources (F, H). ``tolerance`` is a fraction when the
+    not give it. Controlled sources and switches have their two ends as pins ``1`` and ``2``; ``control`` names the
+    controlling nets (E, G) or sources (F, H), through which no current flows. ``tolerance`` is a fraction when the
     netlist states one, ``rating_v``/``rating_w`` likewise. ``is_fitted`` is false for parts marked not fitted.
     """
 
@@ -129,7 +130,10 @@ class Rail:
 
 @dataclass(frozen=True, slots=True)
 class Signal:
-    """A signal that enters the circuit on ``net``: extremes in volts (amperes when ``is_current``), band in hertz."""
+    """A signal that enters the circuit on ``net``: extremes in volts (amperes when ``is_current``), band in hertz.
+
+    ``other`` is the return net of a floating source; the extremes are then those of ``net`` against ``other``.
+    """
 
     net: str
     low: float | None
@@ -139,6 +143,7 @@ class Signal:
     source: str | None = None
     is_current: bool = False
     noise_v: float | None = None
+    other: str | None = None
 
 
 @dataclass(frozen=True, slots=True)

@@ -1,74 +1,137 @@
-"""Names at one level of the hierarchy: parameters, functions, models and subcircuits, the call before the outer level.
+"""Parameter scopes: what a name means inside one subcircuit instance.
 
-Parameters are evaluated on first use, in order of dependency; a circle is an error that names its members.
+A value given in the call beats the default on the ``.subckt`` line, which beats ``.param`` inside the definition,
+which beats what the surrounding definition knows. Parameters may stand in any order; a circle is named as one.
 """
 
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
 
 from ..text.expressions import ExpressionError, evaluate
-from ..text.netlist import Expression, FunctionLine, ModelLine, Scope, Subcircuit, Value
+from ..text.netlist import FunctionLine, ModelLine, Scope, Subcircuit, Value
+from .parts import DeviceModel
 
 
-@dataclass(slots=True)
-class Level:
-    """One open level: the scope that defines names, the values given by the call, the level around it."""
+class Frame:
+    """The scope of the top level or of one instance: parameters, models and subcircuits that it sees."""
 
-    scope: Scope
-    outer: Level | None = None
-    given: Mapping[str, float] = field(default_factory=dict)
-    defaults: Mapping[str, Value] = field(default_factory=dict)
-    _known: dict[str, float | None] = field(default_factory=dict)
-    _open: list[str] = field(default_factory=list)
+    __slots__ = ("_busy", "_models", "_texts", "_values", "functions", "given", "parent", "scope", "written")
 
-    def parameter(self, name: str) -> float | None:
-        """Return the value of a parameter by its lower-case name, or None when nothing defines it.
+    def __init__(
+        self,
+        scope: Scope,
+        parent: Frame | None = None,
+        defaults: Mapping[str, Value] | None = None,
+        given: Mapping[str, float] | None = None,
+    ) -> None:
+        self.scope = scope
+        self.parent = parent
+        self.given: Mapping[str, float] = given or {}
+        self.written: Mapping[str, Value] = {**scope.params, **defaults} if defaults else scope.params
+        outer: Mapping[str, FunctionLine] = parent.functions if parent is not None else {}
+        self.functions: Mapping[str, FunctionLine] = {**outer, **scope.functions} if scope.functions else outer
+        self._values: dict[str, float] = {}
+        self._texts: dict[str, float] = {}
+        self._models: dict[str, DeviceModel] = {}
+        self._busy: list[str] = []
+
+    def find(self, name: str) -> float | None:
+        """Return the value of a parameter (lower-case name); None when no scope defines it."""
+        if name in self._values:
+            return self._values[name]
+        if name in self.given:
+            return self.given[name]
+        written = self.written.get(name)
+        if written is None:
+            return self.parent.find(name) if self.parent is not None else None
+        if isinstance(written, float):
+            return written
+        if name in self._busy:
+            # A default such as {r} for a parameter r means the r of the surrounding scope.
+            if self._busy[-1] == name and self.parent is not None:
+                outer = self.parent.find(name)
+                if outer is not None:
+                    return outer
+            circle = " -> ".join([*self._busy[self._busy.index(name) :], name])
+            raise ExpressionError(f"parameters define each other in a circle: {circle}", kind="parameter-circle")
+        self._busy.append(name)
+        try:
+            value = evaluate(written.text, self.find, self.functions)
+        finally:
+            self._busy.pop()
+        self._values[name] = value
+        return value
+
+    def value(self, value: Value) -> float:
+        """Evaluate a value in this scope.
 
         Raises
         ------
         ExpressionError
-            When parameters refer to each other in a circle, or one has no value.
+            When the expression has no value here.
         """
-        if name in self.given:
-            return self.given[name]
-        if name in self._known:
-            return self._known[name]
-        written = self.scope.params.get(name, self.defaults.get(name))
-        if written is None:
-            return self.outer.parameter(name) if self.outer is not None else None
-        if name in self._open:
-            circle = " -> ".join([*self._open[self._open.index(name) :], name])
-            raise ExpressionError(f"parameters refer to each other in a circle: {circle}", kind="circle")
-        self._open.append(name)
-        try:
-            value = self.value(written)
-        finally:
-            self._open.pop()
-        self._known[name] = value
-        return value
+        if isinstance(value, float):
+            return value
+        if isinstance(value, int):
+            return float(value)
+        known = self._texts.get(value.text)
+        if known is None:
+            known = self._texts[value.text] = evaluate(value.text, self.find, self.functions)
+        return known
 
-    def value(self, written: Value) -> float:
-        """Evaluate a value in this level."""
-        if isinstance(written, Expression):
-            return evaluate(written.text, self.parameter, self.functions())
-        return written
+    def subcircuit(self, name: str) -> tuple[Subcircuit, Frame] | None:
+        """Return the definition that a name means here, with the scope that holds it."""
+        key = name.lower()
+        frame: Frame | None = self
+        while frame is not None:
+            found = frame.scope.subcircuits.get(key)
+            if found is not None:
+                return found, frame
+            frame = frame.parent
+        return None
 
-    def functions(self) -> Mapping[str, FunctionLine]:
-        """Return the functions that are seen here."""
-        if self.outer is None:
-            return self.scope.functions
-        return {**self.outer.functions(), **self.scope.functions} if self.scope.functions else self.outer.functions()
+    def model_line(self, name: str) -> tuple[ModelLine, Frame] | None:
+        """Return the ``.model`` line that a name means here, with the scope that holds it."""
+        key = name.lower()
+        frame: Frame | None = self
+        while frame is not None:
+            found = frame.scope.models.get(key)
+            if found is not None:
+                return found, frame
+            frame = frame.parent
+        return None
 
-    def model(self, name: str) -> ModelLine | None:
-        """Return the model of a name, the innermost first."""
-        found = self.scope.models.get(name.lower())
-        return found if found is not None or self.outer is None else self.outer.model(name)
+    def model(self, name: str) -> DeviceModel | None:
+        """Return the evaluated model of a name with the parameters of its ``ako:`` bases; None when not defined.
 
-    def subcircuit(self, name: str) -> tuple[Subcircuit, Level] | None:
-        """Return a definition with the level that it stands in, the innermost first."""
-        found = self.scope.subcircuits.get(name.lower())
-        if found is not None:
-            return found, self
-        return self.outer.subcircuit(name) if self.outer is not None else None
+        Raises
+        ------
+        ExpressionError
+            When a parameter of the model has no value.
+        """
+        found = self.model_line(name)
+        if found is None:
+            return None
+        line, frame = found
+        key = line.name.lower()
+        known = frame._models.get(key)
+        if known is not None:
+            return known
+        chain = [line]
+        while chain[-1].base is not None and len(chain) < 20:
+            below = frame.model_line(chain[-1].base)
+            if below is None or below[0] in chain:
+                break
+            chain.append(below[0])
+        params: dict[str, float] = {}
+        for each in reversed(chain):
+            for parameter, value in each.params.items():
+                try:
+                    params[parameter] = frame.value(value)
+                except ExpressionError:
+                    # Words such as mfg=… are no numbers; a model keeps what it can say in figures.
+                    continue
+        kind = next((each.kind for each in chain if each.kind), "")
+        model = frame._models[key] = DeviceModel(line.name, kind.upper(), params)
+        return model
