@@ -6,10 +6,10 @@ import re
 from collections.abc import Mapping
 from typing import Annotated, Any, Literal
 
-from pydantic import BaseModel, ConfigDict, Field, ValidationError, model_validator
+from pydantic import BaseModel, ConfigDict, Field, ValidationError, ValidationInfo, field_validator, model_validator
 
 from ..errors import Problem, RulePackError
-from ..quantities import nearest_names
+from ..quantities import nearest_names, parse_quantity
 from ..resources import TomlDocument
 
 KINDS = (
@@ -23,11 +23,33 @@ KINDS = (
     "voltage reference",
     "voltage regulator",
     "charge pump inverter",
+    "bipolar transistor",
+    "junction FET",
+    "MOSFET",
+)
+
+# Unit of a field by the end of its name, the longest ending first.
+UNITS = (
+    ("_v_per_s", "V/s"),
+    ("_v_rthz", "V/rtHz"),
+    ("_hz", "Hz"),
+    ("_ohm", "ohm"),
+    ("_db", "dB"),
+    ("_v", "V"),
+    ("_a", "A"),
+    ("_f", "F"),
 )
 
 Volts = Annotated[float, Field(ge=-1000, le=1000)]
 Positive = Annotated[float, Field(gt=0)]
 NotNegative = Annotated[float, Field(ge=0)]
+
+
+def unit_of_field(name: str) -> str | None:
+    """Return the unit of a field of part data by its name; None for words, counts and ratios."""
+    if name == "is_read":
+        return None
+    return next((unit for ending, unit in UNITS if name.endswith(ending)), None)
 
 
 class PartFile(BaseModel):
@@ -77,6 +99,24 @@ class PartFile(BaseModel):
     from_memory: list[str] = []
     notes: str = ""
     extra: dict[str, float] = {}
+    channels_by_name: dict[str, Annotated[int, Field(ge=1, le=8)]] = {}
+    output_by_name: dict[str, Volts] = {}
+    pin_order: list[str] = []
+    fixed_gain: Positive | None = None
+
+    @field_validator("*", mode="before")
+    @classmethod
+    def _quantity(cls, value: Any, info: ValidationInfo) -> Any:
+        """Read strings with a unit; bare numbers are in SI units."""
+        name = info.field_name or ""
+        if name == "pin_order" and isinstance(value, str):
+            return value.split()
+        unit = unit_of_field(name)
+        if unit is None:
+            return value
+        if isinstance(value, list):
+            return [parse_quantity(each, unit) for each in value]
+        return parse_quantity(value, unit) if isinstance(value, str | int | float) else value
 
     @model_validator(mode="after")
     def _supplies_in_order(self) -> PartFile:

@@ -20,8 +20,9 @@ _PACKAGES = (
     "NOPB|TR|EP|Q1|E3|LF|T|R)"
 )
 _TAIL = re.compile(
-    rf"""^(?:[A-Z]{{0,5}}(?:\d{{1,2}}[A-Z]{{1,3}}\d?)?(?<![A-Z]{{6}}))   # package, grade, temperature letters
-        (?:[-_/.\#+ ](?:{_MAKERS}|{_PACKAGES}[-_]?\d{{0,4}}[A-Z]?|[A-Z]{{0,3}}\d{{0,3}}|\d+))*$""",
+    rf"""^[A-Z]{{0,6}}\d{{0,2}}[A-Z]{{0,3}}\d?                       # package, grade and temperature letters
+        (?:[-_/.\#+\ ](?:{_MAKERS}|{_PACKAGES}[-_]?\d{{0,4}}[A-Z]?     # maker, package
+        |[A-Z]{{0,3}}\d{{1,4}}[A-Z]{{0,2}}\d?|[A-Z]{{1,3}}))*$          # grade, tape, voltage""",
     re.VERBOSE,
 )
 
