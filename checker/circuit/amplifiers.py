@@ -12,7 +12,7 @@ from dataclasses import dataclass, replace
 
 from .assemble import unique_names
 from .clues import Clue
-from .definitions import AMPLIFIER_KINDS, FIVE_PIN_ORDERS, STANDARD
+from .definitions import AMPLIFIER_KINDS, FIVE_PIN_ORDERS, RAIL_KINDS, STANDARD
 from .partdata import PartData
 from .parts import Amplifier, Part, PartKind, Pin, Undetermined
 from .pinouts import split_channels
@@ -61,11 +61,14 @@ def resolve(clue: Clue, supplies: Supplies) -> Resolution:
     assumption = None
     if len(different) > 1:
         standard = [each for each in kept if each[1] == STANDARD]
-        if not standard or not _differ_in_inputs(different):
+        if clue.data is not None and clue.data.kind in RAIL_KINDS and kept[0][0].endswith(clue.data.name):
+            standard, different = kept[:1], set()
+        if not standard or (different and not _differ_in_inputs(different)):
             words = " or ".join(" ".join(each) for _, each, _ in kept[:3])
             return Resolution(reason=f"its {len(clue.nets)} nets fit several pin orders of {name}: {words}")
         text, roles, score = standard[0]
-        assumption = f"{clue.designator}: inputs of {name} are taken in {text}, IN+ first"
+        if different:
+            assumption = f"{clue.designator}: inputs of {name} are taken in {text}, IN+ first"
     if score == 0 and _is_customary(roles, clue.orders) and {"V+", "V-"} <= set(roles):
         return Resolution(
             reason=f"nothing shows which of the {len(clue.nets)} nets of {name} are its supplies",
@@ -102,12 +105,14 @@ def _judge(roles: Sequence[str], nets: Sequence[str], supplies: Supplies) -> tup
     plus, minus = by_role.get("V+"), by_role.get("V-")
     outputs = [net for role, net in by_role.items() if role == "OUT" or (role.startswith("OUT") and role[3:].isdigit())]
     for output in outputs:
+        if "IN" in by_role or "VIN" in by_role:
+            continue
         if output in supplies and supplies[output] != 0.0 and not _is_reference(output):
             return -1, f"an output would sit on the rail {output}"
         if supplies.get(output, 1.0) == 0.0:
             return -1, f"an output would sit on ground ({output})"
     if plus is None or minus is None:
-        return 0, ""
+        return _judge_source(by_role, supplies)
     if plus == minus:
         return -1, f"both supply pins would sit on {plus}"
     high, low = _polarity(plus, supplies), _polarity(minus, supplies)
@@ -119,6 +124,27 @@ def _judge(roles: Sequence[str], nets: Sequence[str], supplies: Supplies) -> tup
     if volts_high is not None and volts_low is not None and volts_high <= volts_low:
         return -1, f"V+ would sit on {plus}, below V- on {minus}"
     return int(high is not None) + int(low is not None), ""
+
+
+def _judge_source(by_role: Mapping[str, str], supplies: Supplies) -> tuple[int, str]:
+    """Score the order of a three-pin rail source: common pin on ground, input on a supply beyond the output."""
+    source, output = by_role.get("IN", by_role.get("VIN")), by_role.get("OUT")
+    if source is None or output is None:
+        return 0, ""
+    common = by_role.get("GND", by_role.get("COMMON"))
+    score = 0
+    if supplies.get(source, 1.0) == 0.0:
+        return -1, f"its input would sit on ground ({source})"
+    if common is not None and common in supplies:
+        if supplies[common] not in (0.0, None):
+            return -1, f"its common pin would sit on {common}"
+        score += 1
+    volts_in, volts_out = supplies.get(source), supplies.get(output)
+    if volts_in is not None and volts_out is not None and abs(volts_in) <= abs(volts_out):
+        return -1, f"its input {source} would stand below its output {output}"
+    if source in supplies:
+        score += 1
+    return score, ""
 
 
 def _is_reference(net: str) -> bool:

@@ -26,7 +26,7 @@ LINEAR_KINDS = frozenset(
 
 _BRANCHES = frozenset({PartKind.VCVS, PartKind.CCVS, PartKind.VOLTAGE_SOURCE, PartKind.INDUCTOR})
 
-HIGH_GAIN = 1000.0
+HIGH_GAIN = 999.0
 MOST_PARTS = 120
 # A stage that charges a capacitor has no resistance of its own; simulators give every net this conductance.
 LEAST_SIEMENS = 1e-12

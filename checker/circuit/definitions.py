@@ -26,11 +26,11 @@ RAIL_KINDS = frozenset({"voltage regulator", "voltage reference", "rail splitter
 # Customary orders of five-node models; the shares were counted over 2,477 commented models of public collections.
 STANDARD = ("IN+", "IN-", "V+", "V-", "OUT")
 FIVE_PIN_ORDERS: tuple[tuple[str, tuple[str, ...]], ...] = (
-    ("the customary order of models", STANDARD),
-    ("the order with the output third", ("IN+", "IN-", "OUT", "V+", "V-")),
-    ("the order with the inverting input first and the output third", ("IN-", "IN+", "OUT", "V+", "V-")),
-    ("the order with the output between the supplies", ("IN-", "IN+", "V-", "OUT", "V+")),
-    ("the customary order with exchanged inputs", ("IN-", "IN+", "V+", "V-", "OUT")),
+    ("customary order of models", STANDARD),
+    ("order with the output third", ("IN+", "IN-", "OUT", "V+", "V-")),
+    ("order with the inverting input first and the output third", ("IN-", "IN+", "OUT", "V+", "V-")),
+    ("order with the output between the supplies", ("IN-", "IN+", "V-", "OUT", "V+")),
+    ("customary order with exchanged inputs", ("IN-", "IN+", "V+", "V-", "OUT")),
 )
 
 # With its ports named as an amplifier's, a body of this gain is one; below, it is a finished gain stage.
@@ -80,7 +80,7 @@ def read_definition(
         return _rail_source(definition, data)
     if data is not None and data.kind not in AMPLIFIER_KINDS:
         data = None
-    if clues and data is None:
+    if clues and not _are_own(clues, data):
         return _wrapper(definition, parts, clues)
     linear = bool(parts) and not clues and is_linear(parts)
     core = [each for each in parts if each.kind is not PartKind.DIODE]
@@ -104,6 +104,13 @@ def read_definition(
         orders = FIVE_PIN_ORDERS if len(ports) == 5 else ()
         return Reading("undecided", orders=orders)
     return BLOCK
+
+
+def _are_own(clues: Mapping[str, Clue], data: PartData | None) -> bool:
+    """True when the inner amplifiers are pieces of a maker's model, which carry the number of the whole."""
+    if data is None:
+        return False
+    return all(data.name.lower() in (clue.part_name or "").lower() and clue.data is None for clue in clues.values())
 
 
 def _by_words(
@@ -145,7 +152,7 @@ def _by_part(definition: Subcircuit, data: PartData, linear: bool) -> Reading:
     if len(ports) == 5 and data.kind in {"op-amp", "comparator", "current-feedback"}:
         orders = [*FIVE_PIN_ORDERS, *orders]
     elif len(ports) == 3 and data.kind != "buffer":
-        orders = [("the customary order of models", ("IN+", "IN-", "OUT"))]
+        orders = [("customary order of models", ("IN+", "IN-", "OUT"))]
     return Reading("undecided", orders=tuple(orders), data=data, has_linear_body=linear)
 
 

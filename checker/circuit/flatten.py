@@ -325,7 +325,7 @@ class Flattener:
                     "subcircuit-undefined",
                     f"{level.prefix}{element.designator}: no .subckt defines `{name}`",
                     element.location,
-                    level="warning" if self._board is not None else "error",
+                    level="warning",
                     because="the part is kept with its pins, but nothing is computed through it",
                     cure="include the library that defines it, or declare it under [parts] in review.toml",
                     nearest=nearest_names(name, known),

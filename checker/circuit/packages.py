@@ -26,6 +26,6 @@ def named_part(
         standard = FIVE_PIN_ORDERS[0]
         orders = [standard, *(each for each in orders if each[1] != standard[1])]
     if not is_board and count == 3 and data.kind in {"op-amp", "comparator", "current-feedback"}:
-        orders.append(("the customary order of models", ("IN+", "IN-", "OUT")))
+        orders.append(("customary order of models", ("IN+", "IN-", "OUT")))
     clue = Clue(part.designator, element.location, part.nets, element.model, orders=tuple(orders), data=data)
     return part, clue

@@ -7,7 +7,7 @@ that a part of this name and this number of nets may have; the rails decide betw
 from __future__ import annotations
 
 from collections.abc import Iterable, Sequence
-from itertools import product
+from itertools import permutations, product
 
 from .partdata import PartData, Pinout
 
@@ -52,9 +52,14 @@ def orders_for(data: PartData, name: str, count: int, *, is_package_line: bool) 
             continue
         for roles in _readings(pinout, count):
             found.setdefault(roles, f"{pinout.package} pinout of {data.name}")
+    if count == 3 and data.kind in {"voltage regulator", "voltage reference"} and data.output_stage != "shunt":
+        # Pin order differs from package to package; the rails tell which it is.
+        common = "ADJ" if any(role == "ADJ" for pinout in data.pinouts for role, _ in pinout.roles) else "GND"
+        for roles in permutations(("IN", "OUT", common)):
+            found.setdefault(roles, "wiring to the rails")
     if not is_package_line and not found:
         for roles in model_orders(data.kind, count):
-            found.setdefault(roles, "the customary order of models")
+            found.setdefault(roles, "customary order of models")
     return tuple((text, roles) for roles, text in found.items())
 
 

@@ -246,6 +246,8 @@ def is_rail_by_source(
         return net in supply_nets and held.is_still
     if net in supply_nets or is_rail_name(net) or is_reference_name(net):
         return True
+    if circuit.style == "board":
+        return True  # the only source on a board is a battery
     source = held.sources[-1] if held.sources else ""
     bare = source.rsplit("/", 1)[-1]
     if is_rail_name(bare) or is_reference_name(bare) or agrees_with_name(net, held.volts):

@@ -19,6 +19,7 @@ _TAIL_VOLTS = (
     re.compile(r"[-_](\d{1,2})[.V](\d{1,3})(?!\d)"),
     re.compile(r"[-_](\d)(\d)(?:\d{2})?[A-Z]?(?:[-/].*)?$"),
     re.compile(r"[-_](\d{1,2})(?:V|$|[-/])"),
+    re.compile(r"[A-Z](\d)(\d)$"),
 )
 
 
@@ -31,13 +32,15 @@ def fixed_volts(data: PartData, name: str) -> float | None:
     if member is not None:
         return data.output_by_name[member]
     plain = plain_number(name)
+    family = longest_prefix(name, (data.name, *data.aliases)) or ""
     for pattern in _TAIL_VOLTS:
-        match = pattern.search(plain)
+        match = pattern.search(plain, len(family) - 1 if family else 0)
         if match is None:
             continue
         volts = float(f"{match[1]}.{match[2]}") if pattern.groups == 2 else float(match[1])
-        if any(abs(volts - each) < 0.01 for each in data.fixed_output_v):
-            return volts
+        for each in data.fixed_output_v:
+            if abs(volts - abs(each)) < 0.01:
+                return each
     return data.fixed_output_v[0] if len(data.fixed_output_v) == 1 else None
 
 

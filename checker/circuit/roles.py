@@ -33,12 +33,12 @@ _WORDS = _table(
     {
         "IN+": "in+ +in inp inplus in_p ip vinp vin+ +vin noninv noninverting ninv ni nin+ pos_in inpos posin plus + pin "
         "inputp inputplus pinput v_inp vip nonin nonincv nipos ip+ +input input+",
-        "IN+ 1": "p pos np vp v+ a in1",
+        "IN+ 1": "p pos np vp v+",
         "IN-": "in- -in inn inm inminus in_n in_m inv inverting im vinn vinm vin- -vin neg_in inneg negin minus - "
         "nin inputn inputminus ninput v_inn vim vi- im- -input input-",
-        "IN- 1": "n m neg nn vn vm v- b in2",
+        "IN- 1": "n m neg nn vn vm v-",
         "OUT": "out output vout o vo outp outa voutp out1 op opout",
-        "OUT 1": "vs y z q c",
+        "OUT 1": "vs",
         "V+": "v+ vcc vdd vccp vpos vs+ +vs +v +vcc vplus pvcc avdd avcc 99 vsp vccplus vsupp vsup+ vp+ vpp v_pos ps+ pwr+ "
         "vhi vdda vcca vc hv+ +ve",
         "V+ 1": "vp vs pos p 100 50p cc dd top",
