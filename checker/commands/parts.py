@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import asdict, fields
 from typing import TYPE_CHECKING
 
@@ -30,6 +30,9 @@ UNITS = (
     ("_v_per_s", "V/s"), ("_v_rthz", "V/rtHz"), ("_load_f", "F"), ("_ohm", "ohm"), ("_hz", "Hz"), ("_db", "dB"),
     ("_v", "V"), ("_a", "A"),
 )  # fmt: skip
+
+# The width of the labels beside the figures of a part.
+COLUMN = 26
 
 _APART = {"name", "kind", "aliases", "source", "verified", "from_memory", "notes", "pinouts", "extra"}
 
@@ -98,22 +101,22 @@ def part_lines(part: PartData, width: int) -> Iterator[Line]:
     """Yield everything that is known of a part; figures recalled rather than read carry a mark."""
     yield from wrap([(part.name, "heading"), (f"  {part.kind}", "")], width)
     if part.aliases:
-        yield from labelled("also", [(", ".join(part.aliases), "")], width, 2, 34)
+        yield from labelled("also", [(", ".join(part.aliases), "")], width, 2, COLUMN)
     for each in fields(part):
         value = getattr(part, each.name)
-        if each.name in _APART or value is None or value == ():
+        if each.name in _APART or value is None or (isinstance(value, tuple | Mapping) and not value):
             continue
         mark = "" if part.is_read(each.name) or isinstance(value, str | tuple) else "  (from memory, not read)"
         spans: list[Span] = [(_said(each.name, value), "figure"), (mark, "label")]
-        yield from labelled(_label(each.name), spans, width, 2, 34)
+        yield from labelled(_label(each.name), spans, width, 2, COLUMN)
     for pinout in part.pinouts:
         roles = "   ".join(f"{number}\u00a0{role}" for role, number in pinout.roles)
-        yield from labelled(f"pins, {pinout.package}", [(roles, "")], width, 2, 34)
+        yield from labelled(f"pins, {pinout.package}", [(roles, "")], width, 2, COLUMN)
     for key, figure in part.extra.items():
-        yield from labelled(key.replace("_", " "), [(engineering(figure, _unit(key)), "figure")], width, 2, 34)
+        yield from labelled(key.replace("_", " "), [(engineering(figure, _unit(key)), "figure")], width, 2, COLUMN)
     for label, text in (("notes", part.notes), ("source", part.source), ("verified", part.verified)):
         if text:
-            yield from labelled(label, [(text, "")], width, 2, 34)
+            yield from labelled(label, [(text, "")], width, 2, COLUMN)
 
 
 def _unit(name: str) -> str:
@@ -131,6 +134,8 @@ def _said(name: str, value: object) -> str:
         return "yes" if value else "no"
     if isinstance(value, tuple):
         return ", ".join(_said(name, each) for each in value)
+    if isinstance(value, Mapping):
+        return ", ".join(f"{key} {_said(name, each)}" for key, each in value.items())
     if isinstance(value, int) and name == "channels":
         return str(value)
     return engineering(float(value), _unit(name)) if isinstance(value, int | float) else str(value)
