@@ -45,7 +45,9 @@ _REGISTRY: dict[tuple[str, str], Measure] = {}
 _LOADED: set[str] = set()
 
 
-def measure(subject: str, *, unit: str = "", kind: str = "number", name: str | None = None) -> Callable[[Compute], Compute]:
+def measure(
+    subject: str, *, unit: str = "", kind: str = "number", name: str | None = None
+) -> Callable[[Compute], Compute]:
     """Declare the decorated function as the measure of its name on subjects of the given kind."""
     if subject not in SUBJECT_KINDS:
         raise ValueError(f"unknown subject kind {subject!r}")

@@ -9,7 +9,6 @@ from typing import Any
 
 from ..errors import Problem
 
-
 # The figures that every report gives for a stage, by their fixed names (null where they do not apply).
 STAGE_MEASURES = (
     "dc_gain", "midband_gain", "gains", "signal_gain", "noise_gain", "bandwidth_hz", "phase_margin_deg",

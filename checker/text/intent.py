@@ -114,11 +114,13 @@ class Intent:
 
     def rail(self, net: str) -> float | None:
         """Return the declared voltage of a net, or None."""
-        return _folded(self.rails, net)
+        found: float | None = _folded(self.rails, net)
+        return found
 
     def signal(self, net: str) -> SignalIntent | None:
         """Return the declared signal on a net, or None."""
-        return _folded(self.signals, net)
+        found: SignalIntent | None = _folded(self.signals, net)
+        return found
 
     def limit(self, rule: str, name: str) -> float | str | None:
         """Return a changed limit of a rule, or None."""

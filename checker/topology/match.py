@@ -250,7 +250,10 @@ class Matcher:
         rest = [edge for edge in self._edges_at(match, net) if edge.key not in used]
         if name == _ANY:
             feedback = {each.output for each in match.amplifiers.values()}
-            return net not in feedback and not any(edge.other(net) in feedback for edge in rest)
+            if net in feedback or any(edge.other(net) in feedback for edge in rest):
+                return False
+            self._note_any(match, net, rest)
+            return True
         if name == _REFERENCE:
             return self._rests_on_reference(match, net, rest)
         if _is_entry_name(name):
@@ -260,6 +263,18 @@ class Matcher:
         if self.circuit.amplifiers_at(net) and not any(net == each.output for each in match.amplifiers.values()):
             return True
         return not rest
+
+    def _note_any(self, match: Match, net: str, rest: list[Edge]) -> None:
+        """Record what drives a pin about which the template asks nothing."""
+        if self.net_kind(net) == _REFERENCE:
+            match.references.append(net)
+        elif net in self.circuit.signals or self.circuit.amplifiers_at(net) or not rest:
+            match.entries.append(net)
+        else:
+            ends = [edge.other(net) for edge in rest]
+            entries = [end for end in ends if self.net_kind(end) != _REFERENCE]
+            match.entries.extend(entries)
+            match.references.extend([net] if not entries else [])
 
     def _rests_on_reference(self, match: Match, net: str, rest: list[Edge]) -> bool:
         if self.net_kind(net) == _REFERENCE:

@@ -26,7 +26,9 @@ def test_e24_is_the_rounded_rule_with_eight_historic_deviations():
     assert list(preferred_series("E24")) == [E24_DEVIATIONS.get(step, step) for step in geometric]
 
 
-@pytest.mark.parametrize(("coarse", "fine"), [("E3", "E6"), ("E6", "E12"), ("E12", "E24"), ("E48", "E96"), ("E96", "E192")])
+@pytest.mark.parametrize(
+    ("coarse", "fine"), [("E3", "E6"), ("E6", "E12"), ("E12", "E24"), ("E48", "E96"), ("E96", "E192")]
+)
 def test_coarser_series_is_every_second_value_of_the_finer_one(coarse, fine):
     assert preferred_series(fine)[::2] == preferred_series(coarse)
 

@@ -12,6 +12,7 @@ import sys
 from pathlib import Path
 
 import pytest
+
 from ampwarden.text import parse_intent
 
 ROOT = Path(__file__).parents[2]

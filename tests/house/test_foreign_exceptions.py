@@ -5,13 +5,14 @@ import subprocess
 import sys
 
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
+
 from ampwarden.circuit import build_circuit, load_catalogue
 from ampwarden.errors import AmpwardenError, NetlistError
 from ampwarden.pipeline import bug_problem, review, review_text
 from ampwarden.resources import parse_toml
 from ampwarden.text import parse_intent, parse_netlist
-from hypothesis import HealthCheck, given, settings
-from hypothesis import strategies as st
 
 WORDS = (
     "R1", "R2", "C1", "U1", "XU1", "Q1", "D1", "V1", "E1", "0", "gnd", "VCC", "VEE", "in", "out", "n1", "10k",

@@ -5,8 +5,9 @@ import subprocess
 import sys
 from importlib import import_module
 
-import ampwarden
 import pytest
+
+import ampwarden
 
 ROOMS = ["text", "circuit", "topology", "analysis", "rulebook", "report"]
 

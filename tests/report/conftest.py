@@ -4,6 +4,7 @@ from dataclasses import replace
 from datetime import date
 
 import pytest
+
 from ampwarden.errors import Location, Problem
 from ampwarden.rulebook.findings import (
     STAGE_MEASURES,

@@ -11,6 +11,7 @@ from xml.etree import ElementTree
 
 import jsonschema
 import pytest
+
 from ampwarden.errors import UsageError
 from ampwarden.report import Options, find_format
 from ampwarden.report.schema import review_schema, shipped_schema

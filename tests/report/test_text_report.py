@@ -4,6 +4,7 @@ import re
 from dataclasses import replace
 
 import pytest
+
 from ampwarden.report import Options, find_format
 from ampwarden.rulebook.findings import Review, Unevaluated
 

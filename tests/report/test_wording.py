@@ -3,6 +3,7 @@
 from dataclasses import replace
 
 import pytest
+
 from ampwarden.report.lines import labelled, to_ascii, two_sided, wrap, write
 from ampwarden.report.wording import MEASURES, fails, figures_of, listing, plural, stage_facts
 from ampwarden.rulebook.findings import STAGE_MEASURES
