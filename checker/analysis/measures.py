@@ -22,7 +22,9 @@ Compute = Callable[["Bench", Subject], Figure]
 KINDS = ("number", "flag", "word", "words", "numbers", "map")
 
 # Modules that declare measures, by the subjects they speak of; loaded on the first question about such a subject.
-HOMES: dict[str, tuple[str, ...]] = {}
+HOMES: dict[str, tuple[str, ...]] = {
+    "stage": ("stage_gain", "stage_swing", "stage_response", "stage_matching", "stage_switching"),
+}
 
 
 @dataclass(frozen=True, slots=True)

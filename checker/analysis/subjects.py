@@ -20,6 +20,10 @@ SUBJECT_KINDS = (
 )
 
 
+CURRENT_INPUT = frozenset(("transimpedance-amplifier",))
+"""Topologies whose input is a current: nothing holds their input net."""
+
+
 @dataclass(frozen=True, slots=True)
 class Subject:
     """One thing that a rule is asked of.
