@@ -168,6 +168,8 @@ def _nesting(text: str) -> int:
 
 def _plain(node: Any) -> Tree:
     rule, children = node.data, node.children
+    if rule == "number" and str(children[0])[0].isalpha():  # `R2` in an expression is a parameter, not 0.2 ohm
+        return ("name", str(children[0]).lower())
     if rule == "number":
         value = read_value(str(children[0]), "R")
         if value is None:
