@@ -104,7 +104,7 @@ def parse_syntax(text: str) -> Node:
         at_end = trouble.token.type == "$END" or place is None
         raise _diagnosis(text, len(text.rstrip()) if at_end else int(place or 0), wants_operand) from trouble
     except UnexpectedCharacters as trouble:
-        raise _diagnosis(text, trouble.pos_in_stream, "NAME" in (trouble.allowed or ())) from trouble
+        raise _diagnosis(text, trouble.pos_in_stream or 0, "NAME" in (trouble.allowed or ())) from trouble
     except UnexpectedInput as trouble:
         raise _diagnosis(text, len(text.rstrip()), True) from trouble
     return _plain(tree, 0)
@@ -187,9 +187,9 @@ def _diagnosis(text: str, offset: int, wants_operand: bool) -> SyntaxTrouble:
         if word == written if written.isalpha() else rest.startswith(written):
             return SyntaxTrouble("condition-syntax", what, offset, offset + len(written), expected, cure)
     if rest[0] in ")]":
-        what, cure = f"`{rest[0]}` closes nothing that is open", "remove it, or open the bracket"
         if _last_open(text[:offset]) is not None:
-            what, cure = f"`{rest[0]}` comes too early", None
+            return SyntaxTrouble("condition-syntax", f"`{rest[0]}` comes too early", offset, offset + 1, expected)
+        what, cure = f"`{rest[0]}` closes nothing that is open", "remove it, or open the bracket"
         return SyntaxTrouble("condition-syntax", what, offset, offset + 1, expected, cure)
     return SyntaxTrouble("condition-syntax", f"`{word}` is out of place", offset, offset + len(word), expected)
 
