@@ -199,7 +199,7 @@ def inspect(netlist: Netlist, intent: Intent | None = None, *, knowledge: Knowle
     known = knowledge or _Library().knowledge_for(declared)
     circuit = build_circuit(netlist, declared, catalogue=known.catalogue)
     stages = find_stages(circuit, known.templates)
-    return Inspection(circuit, stages, Bench(circuit, stages, declared))
+    return Inspection(circuit, stages, Bench(circuit, stages, declared, templates=known.templates))
 
 
 def _given_intent(intent: str | PathLike[str] | Intent | None) -> Intent | None:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from functools import cached_property
 from typing import TYPE_CHECKING
 
@@ -19,6 +19,7 @@ from .solve import SingularEquations
 from .subjects import Subject
 
 if TYPE_CHECKING:
+    from ..topology import Template
     from .extremes import Extremes
     from .regions import Region
     from .small_signal import SmallSignal
@@ -37,15 +38,27 @@ class Bench:
         What was read and recognized.
     intent
         What the designer declared.
+    templates
+        The topologies by which the stages were recognized, for circuits that are changed and computed again.
     """
 
-    def __init__(self, circuit: Circuit, stages: Iterable[Stage], intent: Intent | None = None) -> None:
+    def __init__(
+        self,
+        circuit: Circuit,
+        stages: Iterable[Stage],
+        intent: Intent | None = None,
+        *,
+        templates: Sequence[Template] | None = None,
+    ) -> None:
         self.circuit = circuit
         self.stages = tuple(stages)
         self.intent = intent if intent is not None else Intent()
+        self.templates = templates
+        self.recomputed = 0
         self._figures: dict[tuple[str, str, str], Figure] = {}
         self._asked: list[tuple[str, str, str]] = []
         self._subjects: dict[str, tuple[Subject, ...]] = {}
+        self.related: dict[tuple[str, str], dict[str, list[Subject]]] = {}
         self._limits: dict[str, OutputLimits | None] | None = None
         self._system: System | None = None
         self._solution: OperatingPoint | NoOperatingPoint | None = None

@@ -58,6 +58,7 @@ class Device:
 
     def __init__(self, part: Part) -> None:
         self.part = part
+        self.nets: tuple[str, ...]
         self.params: Mapping[str, float] = part.model.params if part.model is not None else {}
         self.area = part.value if part.value is not None and part.value > 0 else 1.0
         self.last: list[float] = []

@@ -22,8 +22,19 @@ Compute = Callable[["Bench", Subject], Figure]
 KINDS = ("number", "flag", "word", "words", "numbers", "map")
 
 # Modules that declare measures, by the subjects they speak of; loaded on the first question about such a subject.
-HOMES: dict[str, tuple[str, ...]] = {
-    "stage": ("stage_gain", "stage_swing", "stage_response", "stage_matching", "stage_switching"),
+HOMES: dict[str, tuple[str, ...]] = {  # fmt: skip
+    "stage": (
+        "stage_names",
+        "stage_gain",
+        "stage_swing",
+        "stage_limits",
+        "stage_response",
+        "stage_matching",
+        "stage_switching",
+        "follower",
+    ),
+    "supply net": ("power",),
+    "input pin": ("bias",),
 }
 
 

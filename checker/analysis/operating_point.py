@@ -130,7 +130,8 @@ def solve_operating_point(
     """
     import numpy as np
 
-    devices = [(Device(part), [system.index(net) for net in part.nets]) for part in system.nonlinear]
+    made = [Device(part) for part in system.nonlinear]
+    devices = [(device, [system.index(net) for net in device.nets]) for device in made]
     sources = list(system.sources)
     for row, value in (override or {}).items():
         sources[row] = value

@@ -64,7 +64,7 @@ def _rejection_db(differential: float, common: float) -> float:
     return 20 * math.log10(abs(differential / common))
 
 
-def resistor_tolerance(bench: Bench, designator: str) -> float | None:
+def tolerance_of(bench: Bench, designator: str) -> float | None:
     """Return the tolerance of a resistor as a fraction: its own, else the declared one; None without either."""
     part = bench.circuit.part(designator)
     if part is not None and part.tolerance is not None:
@@ -118,7 +118,7 @@ def ratio_spread(bench: Bench, stage: Stage) -> tuple[float, float, float, float
     found = []
     for role in ROLES:
         names = [name for name in stage.roles.get(role, ()) if _is_resistor(bench, name)]
-        tolerances = [resistor_tolerance(bench, name) for name in names]
+        tolerances = [tolerance_of(bench, name) for name in names]
         if not names or any(each is None for each in tolerances):
             return Unknown("the tolerance of the resistors is not declared", "[tolerance] resistor")
         found.append(max(each for each in tolerances if each is not None))
@@ -128,3 +128,55 @@ def ratio_spread(bench: Bench, stage: Stage) -> tuple[float, float, float, float
 def _is_resistor(bench: Bench, name: str) -> bool:
     part = bench.circuit.part(name)
     return part is not None and part.kind is PartKind.RESISTOR
+
+
+@measure("stage", kind="flag")
+def has_own_dividers(bench: Bench, subject: Subject) -> Figure:
+    """True when both dividers of a difference stage are drawn with known resistances."""
+    return Known(ratios(stage_of(subject)) is not None)
+
+
+@measure("stage")
+def ratio_inverting(bench: Bench, subject: Subject) -> Figure:
+    """R2/R1: feedback over input resistor on the inverting side of a difference stage."""
+    found = ratios(stage_of(subject))
+    return Known(found[0]) if found is not None else Unknown("the dividers have no known values")
+
+
+@measure("stage")
+def ratio_noninverting(bench: Bench, subject: Subject) -> Figure:
+    """R4/R3: reference leg over input resistor on the non-inverting side of a difference stage."""
+    found = ratios(stage_of(subject))
+    return Known(found[1]) if found is not None else Unknown("the dividers have no known values")
+
+
+@measure("stage", kind="words")
+def divider_parts(bench: Bench, subject: Subject) -> Figure:
+    """Designators of the four resistors of a difference stage."""
+    stage = stage_of(subject)
+    return Known(tuple(name for role in ROLES for name in stage.roles.get(role, ())))
+
+
+@measure("stage", unit="%")
+def resistor_tolerance(bench: Bench, subject: Subject) -> Figure:
+    """Largest tolerance among the resistors of a difference stage's dividers (fraction)."""
+    spread = ratio_spread(bench, stage_of(subject))
+    return spread if isinstance(spread, Unknown) else Known(max(spread))
+
+
+@measure("stage", unit="%")
+def tolerance_for_rejection(bench: Bench, subject: Subject) -> Figure:
+    """Tolerance of the resistors at which the worst-case rejection comes to the wanted one: (1 + G)/(4 * rejection)."""
+    stage = stage_of(subject)
+    found = ratios(stage)
+    wanted = bench.value("declared_rejection", subject)
+    if found is None:
+        return Unknown("the dividers have no known values")
+    if wanted is None:
+        limit = bench.intent.limit("difference-ratio-mismatch", "rejection")
+        wanted = float(limit) if isinstance(limit, int | float) else 30.0
+    ahead = 1.0
+    gain = bench.value("dc_gain", subject)
+    if gain and _differential(*found):
+        ahead = abs(gain) / _differential(*found)
+    return Known((1 + found[0]) * ahead / (4 * 10 ** (wanted / 20)))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Sequence
 from typing import Any
 
@@ -15,6 +16,7 @@ from .functions import FUNCTIONS, bind_call
 from .syntax import Node
 from .terms import (
     FLAG,
+    NUMBER,
     WORD,
     WORDS,
     NameType,
@@ -142,6 +144,8 @@ class Binder:
         """Bind a figure by name."""
         written = node.words[0]
         found = self.resolve(written)
+        if found is None and written == "pi":
+            return Term(node, NUMBER, at_work.constant(math.pi), is_constant=True)
         if found is None:
             self._unknown_name(node, written)
             return None
@@ -182,9 +186,9 @@ class Binder:
             value, kind = read_quantity(text)
         except ValueError as trouble:
             what, _, near = str(trouble).partition("; known units near it: ")
-            self.report(
-                node, "condition-unit", f"`{text}`: {what}", expected=f"a unit such as {near}", cure=_unit_hint(text)
-            )
+            cure = _unit_hint(text)
+            expected = None if cure.startswith("add") else f"a unit such as {near}"
+            self.report(node, "condition-unit", f"`{text}`: {what}", expected=expected, cure=cure)
             return None
         if value in (float("inf"), float("-inf")):
             self.report(node, "condition-number", f"`{text}` is too large a number")
@@ -288,9 +292,6 @@ class Binder:
         kind = terms[0].type
         signs = [1 if each == "*" else -1 for each in node.words]
         for sign, each in zip(signs, terms[1:], strict=True):
-            if sign < 0 and each.is_constant and isinstance(found := each.run(()), Known) and found.value == 0:
-                self.report(each.node, "condition-number", "division by a written 0")
-                return None
             kind = multiplied(kind, each.type, sign)
         kind = TermType(kind.kind, kind.unit, kind.dimension)
         return self.arithmetic(node, at_work.multiplied(signs), terms, kind)
@@ -325,10 +326,18 @@ class Binder:
         terms = [each for each in found if each is not None]
         return terms if len(terms) == len(found) else None
 
-    def arithmetic(self, node: Node, function: Callable[..., Any], terms: Sequence[Term], kind: TermType) -> Term:
-        """Return the term that computes ``function`` of bound terms."""
+    def arithmetic(
+        self, node: Node, function: Callable[..., Any], terms: Sequence[Term], kind: TermType
+    ) -> Term | None:
+        """Return the term that computes ``function`` of bound terms; of written numbers it is computed at once."""
         run = at_work.computed(self.words_of(node), function, [each.run for each in terms])
-        return Term(node, kind, run, is_constant=all(each.is_constant for each in terms))
+        if not all(each.is_constant for each in terms):
+            return Term(node, kind, run)
+        found = run(())
+        if not isinstance(found, Known):
+            self.report(node, "condition-number", found.unknowns[0].reason)
+            return None
+        return Term(node, kind, at_work.constant(found.value), is_constant=True)
 
     def arithmetic_of(self, node: Node, function: Callable[..., Any], runs: Sequence[Run], kind: TermType) -> Term:
         """Return the term that computes ``function`` of terms that are evaluated already."""
@@ -376,7 +385,7 @@ def place_in(text: str, where: Location, start: int, end: int) -> Location:
     return Location(where.file, line, column + 1, row, length)
 
 
-def _unit_hint(text: str) -> str | None:
+def _unit_hint(text: str) -> str:
     unit = text.lstrip("0123456789.").strip()
     if unit[:1] in {"k", "M", "G", "m", "u", "n", "p", "µ", "f", "T", "g"} and len(unit.rstrip("0123456789")) == 1:
         return f"add the unit behind the prefix, such as {unit[0]}ohm, {unit[0]}V or {unit[0]}F"

@@ -146,13 +146,14 @@ def bind_within(binder: Binder, node: Node) -> Term | None:
             binder.report(low.node, "condition-range", what, cure=f"{text[1]} .. {text[0]}")
             return None
     unit = joined(figure.type, joined(low.type, high.type)).unit
+    constant = all(each.is_constant for each in terms)
+    if node.what == "outside":
+        return binder.flag(node, at_work.outside(figure.run, low.run, high.run, unit), is_constant=constant)
     tests = (
         at_work.compared(">=", figure.run, low.run, unit, measures_right=False),
         at_work.compared("<=", figure.run, high.run, unit, measures_right=False),
     )
-    test = at_work.every(tests)
-    constant = all(each.is_constant for each in terms)
-    return binder.flag(node, test if node.what == "within" else at_work.denied(test), is_constant=constant)
+    return binder.flag(node, at_work.every(tests), is_constant=constant)
 
 
 def bind_among(binder: Binder, node: Node) -> Term | None:

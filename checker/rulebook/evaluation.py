@@ -7,8 +7,10 @@ figure cannot be told and carries the figure's reason. Figures that differ by le
 from __future__ import annotations
 
 import math
+import operator
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
+from math import isfinite
 from typing import Any, Protocol, TypeAlias
 
 from ..analysis.figures import Figure, Known, Unknown
@@ -151,33 +153,33 @@ def figure(name: str, level: int, kind: str) -> Run:
 def computed(text: str, function: Callable[..., Any], runs: Sequence[Run]) -> Run:
     """Return the term ``function`` of other terms; ``text`` is how the rule's author wrote it."""
 
-    def run(readings: Readings) -> Known | Missing:
-        values = []
-        assumptions: tuple[str, ...] = ()
-        unknowns: tuple[Unknown, ...] = ()
-        for each in runs:
-            found = each(readings)
-            if isinstance(found, Missing):
-                unknowns += found.unknowns
-            else:
-                values.append(found.value)
-                if found.assumptions:
-                    assumptions += found.assumptions
-        if unknowns:
-            return Missing(merged((unknowns,)))
+    def answer(found: Sequence[Known]) -> Known | Missing:
         try:
-            result = function(*values)
-            if isinstance(result, float) and not math.isfinite(result):
-                _check_infinite(result, values)
+            result = function(*[each.value for each in found])
+            if result.__class__ is float and not isfinite(result):
+                _check_infinite(result, [each.value for each in found])
         except NoFigure as trouble:
             return Missing((Unknown(f"`{text}` {trouble}"),))
         except ZeroDivisionError:
             return Missing((Unknown(f"`{text}` divides by zero"),))
         except (OverflowError, ValueError):
             return Missing((Unknown(f"`{text}` is too large to be computed"),))
-        return Known(result, merged((assumptions,)) if assumptions else ())
+        for each in found:
+            if each.assumptions:
+                return Known(result, merged(one.assumptions for one in found))
+        return Known(result)
+
+    def run(readings: Readings) -> Known | Missing:
+        found = [each(readings) for each in runs]
+        known = [each for each in found if each.__class__ is Known]
+        return answer(known) if len(known) == len(found) else unknown_of(found)
 
     return run
+
+
+def unknown_of(found: Iterable[Known | Missing]) -> Missing:
+    """Return all that is unknown in some terms, each figure once."""
+    return Missing(merged(each.unknowns for each in found if isinstance(each, Missing)))
 
 
 def _check_infinite(result: float, values: Sequence[Any]) -> None:
@@ -190,27 +192,26 @@ def _check_infinite(result: float, values: Sequence[Any]) -> None:
 
 
 def added(signs: Sequence[int]) -> Callable[..., float]:
-    """Return the function that adds its arguments with the given signs."""
-
-    def add(*values: float) -> float:
-        total = values[0]
-        for sign, value in zip(signs, values[1:], strict=True):
-            total = total + value if sign > 0 else total - value
-        return total
-
-    return add
+    """Return the function that adds its arguments, from the second on with the given signs."""
+    return _folded([operator.add if sign > 0 else operator.sub for sign in signs])
 
 
 def multiplied(signs: Sequence[int]) -> Callable[..., float]:
     """Return the function that multiplies (sign 1) and divides (-1) its arguments from the left."""
+    return _folded([operator.mul if sign > 0 else operator.truediv for sign in signs])
 
-    def multiply(*values: float) -> float:
+
+def _folded(steps: Sequence[Callable[[float, float], float]]) -> Callable[..., float]:
+    if len(steps) == 1:
+        return steps[0]
+
+    def fold(*values: float) -> float:
         total = values[0]
-        for sign, value in zip(signs, values[1:], strict=True):
-            total = total * value if sign > 0 else total / value
+        for step, value in zip(steps, values[1:], strict=True):
+            total = step(total, value)
         return total
 
-    return multiply
+    return fold
 
 
 def entry(text: str, table: Run, key: Run) -> Run:
@@ -219,7 +220,7 @@ def entry(text: str, table: Run, key: Run) -> Run:
     def run(readings: Readings) -> Known | Missing:
         held, wanted = table(readings), key(readings)
         if isinstance(held, Missing) or isinstance(wanted, Missing):
-            return Missing(merged(each.unknowns for each in (held, wanted) if isinstance(each, Missing)))
+            return unknown_of((held, wanted))
         folded = wanted.value.casefold()
         for name, value in held.value.items():
             if str(name).casefold() == folded:
@@ -279,31 +280,36 @@ def is_close(left: float, right: float) -> bool:
     return left == right or math.isclose(left, right, rel_tol=ROUNDING)
 
 
-def holds(operator: str, left: float, right: float) -> bool:
-    """Compare two figures; those that are equal but for rounding count as equal."""
-    close = is_close(left, right)
-    if operator == "<":
-        return left < right and not close
-    if operator == "<=":
-        return left < right or close
-    if operator == ">":
-        return left > right and not close
-    if operator == ">=":
-        return left > right or close
-    return close if operator == "==" else not close
+def _less(left: float, right: float) -> bool:
+    return left < right and not is_close(left, right)
 
 
-def compared(operator: str, left: Run, right: Run, unit: str, *, measures_right: bool) -> Test:
+def _at_most(left: float, right: float) -> bool:
+    return left <= right or is_close(left, right)
+
+
+_HOLDS: dict[str, Callable[[float, float], bool]] = {
+    "<": _less,
+    "<=": _at_most,
+    ">": lambda left, right: _less(right, left),
+    ">=": lambda left, right: _at_most(right, left),
+    "==": is_close,
+    "!=": lambda left, right: not is_close(left, right),
+}
+
+
+def compared(sign: str, left: Run, right: Run, unit: str, *, measures_right: bool) -> Test:
     """Return the comparison of two numbers; ``measures_right`` when the limit is the left one."""
-    shown = _MIRRORED[operator] if measures_right else operator
+    shown = _MIRRORED[sign] if measures_right else sign
+    holds = _HOLDS[sign]
 
     def test(readings: Readings) -> Verdict:
         a, b = left(readings), right(readings)
         if isinstance(a, Missing) or isinstance(b, Missing):
-            return Verdict(None, merged(each.unknowns for each in (a, b) if isinstance(each, Missing)))
+            return Verdict(None, unknown_of((a, b)).unknowns)
         measured, limit = (b.value, a.value) if measures_right else (a.value, b.value)
         assumptions = merged((a.assumptions, b.assumptions)) if a.assumptions or b.assumptions else ()
-        return Verdict(holds(operator, a.value, b.value), (), Comparison(measured, limit, unit, shown), assumptions)
+        return Verdict(holds(a.value, b.value), (), Comparison(measured, limit, unit, shown), assumptions)
 
     return test
 
@@ -314,7 +320,7 @@ def related(left: Run, right: Run, relation: Callable[[Any, Any], bool], *, want
     def test(readings: Readings) -> Verdict:
         a, b = left(readings), right(readings)
         if isinstance(a, Missing) or isinstance(b, Missing):
-            return Verdict(None, merged(each.unknowns for each in (a, b) if isinstance(each, Missing)))
+            return Verdict(None, unknown_of((a, b)).unknowns)
         value = relation(a.value, b.value) is wanted
         if a.assumptions or b.assumptions:
             return Verdict(value, (), None, merged((a.assumptions, b.assumptions)))
@@ -379,6 +385,26 @@ def decided(verdicts: Iterable[Verdict], stop: bool) -> Verdict:
     if comparison is None and not assumptions:
         return FALSE if stop else TRUE
     return Verdict(not stop, (), comparison, merged((assumptions,)))
+
+
+def outside(measured: Run, low: Run, high: Run, unit: str) -> Test:
+    """Return the test that a figure lies outside a range; where it lies inside, the nearer bound is the limit."""
+    above = compared(">=", measured, low, unit, measures_right=False)
+    below = compared("<=", measured, high, unit, measures_right=False)
+    base = denied(every((above, below)))
+
+    def test(readings: Readings) -> Verdict:
+        verdict = base(readings)
+        if verdict.value is not False:
+            return verdict
+        x, a, b = measured(readings), low(readings), high(readings)
+        if isinstance(x, Missing) or isinstance(a, Missing) or isinstance(b, Missing):
+            return verdict
+        if abs(b.value - x.value) < abs(x.value - a.value):
+            return Verdict(False, (), Comparison(x.value, b.value, unit, ">"), verdict.assumptions)
+        return verdict
+
+    return test
 
 
 def every(tests: Sequence[Test]) -> Test:

@@ -16,8 +16,8 @@ from .terms import NUMBER, WORDS, Term, TermType, goes_with, joined, raised
 if TYPE_CHECKING:
     from .binding import Binder
 
-# A question about members inside a question about members is asked once for each pair: two levels are enough.
-MAX_QUANTIFIERS = 3
+# A question about members inside one about members is asked once for each pair; deeper ones would cost too much.
+MAX_QUANTIFIERS = 2
 
 
 @dataclass(frozen=True, slots=True)

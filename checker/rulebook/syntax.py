@@ -6,6 +6,7 @@ the cache of compiled knowledge, so that a warm start needs no grammar.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable
 from dataclasses import dataclass
 from functools import lru_cache
@@ -49,6 +50,7 @@ MISTAKES: tuple[tuple[str, str, str], ...] = (
 _OPERAND = "a figure by name, a number with its unit, a word in quotes or a bracket"
 _OPERATOR = "a comparison, + - * /, and, or, or the end"
 _ATOMS = frozenset({"quantity", "word", "truth", "name"})
+_BLANKED = re.compile(r"\"[^\"\n]*\"|'[^'\n]*'|#[^\n]*")
 _SHUTS = {"(": ")", "[": "]"}
 
 
@@ -146,6 +148,11 @@ def _grammar() -> Lark:
     return Lark(grammar_text("condition"), parser="lalr", propagate_positions=True, maybe_placeholders=False)
 
 
+def _bare(text: str) -> str:
+    """Return the text with quoted words and comments blanked, every other character in its place."""
+    return _BLANKED.sub(lambda match: " " * len(match[0]), text)
+
+
 def _check_bounds(text: str) -> None:
     if not text.strip():
         raise SyntaxTrouble("condition-empty", "the condition is empty", 0, 1, _OPERAND)
@@ -153,7 +160,7 @@ def _check_bounds(text: str) -> None:
         what = f"condition of {len(text)} characters, more than the bound of {MAX_LENGTH}"
         raise SyntaxTrouble("condition-too-long", what, 0, 1, cure="split it into when and require, or into two rules")
     depth = 0
-    for offset, char in enumerate(text):
+    for offset, char in enumerate(_bare(text)):
         if char in "([":
             depth += 1
             if depth > MAX_DEPTH:
@@ -204,7 +211,7 @@ def _first_word(rest: str) -> str:
 
 def _last_open(text: str) -> int | None:
     opened: list[int] = []
-    for offset, char in enumerate(text):
+    for offset, char in enumerate(_bare(text)):
         if char in "([":
             opened.append(offset)
         elif char in ")]" and opened:

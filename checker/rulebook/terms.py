@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import re
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import TYPE_CHECKING, Protocol
 
 from ..quantities import PLAIN, UNITS, Dimension, dimension_of, parse_quantity, unit_name, unit_of
@@ -103,6 +104,7 @@ WORDS = TermType("words")
 NUMBER = TermType("number")
 
 
+@lru_cache(maxsize=512)
 def named_type(kind: str, unit: str, words: tuple[str, ...] = ()) -> TermType:
     """Return the type of a figure that is declared with a unit (the figure itself is in SI units)."""
     if kind not in {"number", "numbers", "map"}:
@@ -119,6 +121,7 @@ def shown_unit(unit: str) -> str:
     return unit if factor == 1.0 and unit != "1" and dimension != PLAIN else unit_of_dimension(dimension)
 
 
+@lru_cache(maxsize=256)
 def unit_of_dimension(dimension: Dimension) -> str:
     """Return the unit that a reader expects for a dimension, ``""`` for a plain number."""
     if dimension == PLAIN:
@@ -137,6 +140,7 @@ def dimension_words(unit: str, dimension: Dimension) -> str:
     return _WORDS.get(name, f"a quantity in {name}")
 
 
+@lru_cache(maxsize=1024)
 def read_quantity(text: str) -> tuple[float, TermType]:
     """Read a number with its unit.
 
