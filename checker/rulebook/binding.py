@@ -258,7 +258,7 @@ class Binder:
         wanted = (words[-1] == "known") is ("not" not in words)
         if term.is_constant:
             self.report(
-                node, "condition-constant", f"`{self.words_of(term.node)}` is written out, so it is always known"
+                term.node, "condition-constant", f"`{self.words_of(term.node)}` is written out, so it is always known"
             )
             return None
         return self.flag(node, at_work.is_known(term.run, wanted=wanted))
@@ -352,7 +352,7 @@ class Binder:
         if table.type.kind != "map":
             cure = f"min({text}), max({text}) or length({text})" if table.type.kind == "numbers" else None
             what = f"`{text}` is {table.type}, not a table"
-            self.report(node, "condition-kind", what, expected="a table of figures by name", cure=cure)
+            self.report(table.node, "condition-kind", what, expected="a table of figures by name", cure=cure)
             return None
         if key.type.kind != "word":
             what = f"`{self.words_of(key.node)}` is {key.type}, looked up in a table"

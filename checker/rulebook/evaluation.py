@@ -18,6 +18,9 @@ from ..analysis.figures import Figure, Known, Unknown
 # Rounding of a computed figure, far below any tolerance of a part.
 ROUNDING = 1e-9
 
+# Beyond it a whole number has no floating figure to compare it with.
+_LARGEST = 10**300
+
 
 class Reading(Protocol):
     """What names are while a rule is applied to one subject."""
@@ -87,7 +90,9 @@ def _number(value: Any) -> float | None:
         value = getattr(value, "item", lambda: None)()  # a numpy scalar
         if isinstance(value, bool) or not isinstance(value, int | float):
             return None
-    return None if isinstance(value, float) and math.isnan(value) else value
+    if isinstance(value, int):
+        return value if abs(value) < _LARGEST else None
+    return None if math.isnan(value) else value
 
 
 def _flag(value: Any) -> bool | None:
@@ -156,7 +161,9 @@ def computed(text: str, function: Callable[..., Any], runs: Sequence[Run]) -> Ru
     def answer(found: Sequence[Known]) -> Known | Missing:
         try:
             result = function(*[each.value for each in found])
-            if result.__class__ is float and not isfinite(result):
+            if result.__class__ is int:
+                float(result)
+            elif result.__class__ is float and not isfinite(result):
                 _check_infinite(result, [each.value for each in found])
         except NoFigure as trouble:
             return Missing((Unknown(f"`{text}` {trouble}"),))
@@ -186,7 +193,8 @@ def _check_infinite(result: float, values: Sequence[Any]) -> None:
     if math.isnan(result):
         raise NoFigure("has no definite value: it sets one infinite figure against another")
     for each in values:
-        if any(math.isinf(one) for one in (each if isinstance(each, tuple) else (each,)) if isinstance(one, float)):
+        group = each.values() if isinstance(each, Mapping) else each if isinstance(each, tuple) else (each,)
+        if any(math.isinf(one) for one in group if isinstance(one, float)):
             return
     raise OverflowError
 
