@@ -6,12 +6,12 @@ from typing import TYPE_CHECKING, Any
 
 from .figures import Figure, Known, Unknown
 from .measures import find_measure, list_measures
-from .subjects import SUBJECT_KINDS, Subject
+from .subjects import Subject
 
 if TYPE_CHECKING:
     from .bench import Bench
 
-__all__ = ["SUBJECT_KINDS", "Bench", "Figure", "Known", "Subject", "Unknown", "find_measure", "list_measures"]
+__all__ = ["Bench", "Figure", "Known", "Subject", "Unknown", "find_measure", "list_measures"]
 
 
 def __getattr__(name: str) -> Any:

@@ -126,6 +126,13 @@ class Bench:
         """Return the stage of an amplifier or of a stage's name."""
         return self._stage_of.get(name.casefold())
 
+    @cached_property
+    def stages_of_parts(self) -> dict[str, str]:
+        """The stage of each part that has a role in one, by designator."""
+        from .listing import stages_of_parts
+
+        return stages_of_parts(self)
+
     # the solved circuit
 
     @property

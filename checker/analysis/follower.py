@@ -50,10 +50,10 @@ def far_end(bench: Bench, stage: Stage) -> tuple[str, str] | None:
     if stage.output is None:
         return None
     circuit = bench.circuit
-    own = {name for names in stage.roles.values() for name in names}
+    taken = bench.stages_of_parts
     found = []
     for part in circuit.parts_on(stage.output):
-        if part.kind is not PartKind.RESISTOR or part.designator in own or part.value is None:
+        if part.kind is not PartKind.RESISTOR or part.designator in taken or part.value is None:
             continue
         other = part.pins[1].net if part.pins[0].net == stage.output else part.pins[0].net
         if 1e-3 < part.value <= ISOLATION_OHM and not circuit.is_stiff(other) and not circuit.amplifiers_at(other):

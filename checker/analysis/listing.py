@@ -81,7 +81,7 @@ def _location_of_net(bench: Bench, net: str) -> Location:
 
 
 def _parts(bench: Bench) -> Iterator[Subject]:
-    owner = stages_of_parts(bench)
+    owner = bench.stages_of_parts
     for part in bench.circuit.parts.values():
         if part.is_fitted:
             nets = tuple(dict.fromkeys(part.nets))

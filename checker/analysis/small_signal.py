@@ -67,7 +67,7 @@ class SmallSignal:
 
         right = np.zeros((self.system.size, len(nets)))
         for column, net in enumerate(nets):
-            row = self.system.drivers.get(net, self.system.index(net))
+            row = self.system.mover(net)
             if row >= 0:
                 right[row, column] = 1.0
         return self.factors.solve(right)

@@ -176,6 +176,8 @@ def noise_gain(bench: Bench, subject: Subject) -> Figure:
         return Unknown("the stage switches: no loop is closed")
     if stage.topology in JUNCTION_TOPOLOGIES:
         return Unknown("the loop depends on which diodes conduct")
+    if stage.topology == "unrecognized" and bench.solver(stage).system.nonlinear:
+        return Unknown("diodes or transistors stand in a loop that is not recognized")
     if len(stage.amplifiers) != 1:
         return Unknown("the stage has several amplifiers, each with its own noise gain")
     reason = gain_doubt(bench, stage)

@@ -36,7 +36,11 @@ def transfer_modes(bench: Bench, stage: Stage, *, ideal: bool) -> Modes | str:
         return "input or output net is not known"
     if stage.topology in CURRENT_INPUT:
         return _current_modes(bench, stage, ideal=ideal)
-    found = bench.solver(stage).modes(stage.inputs, stage.output, ideal=ideal)
+    solver = bench.solver(stage)
+    floating = [net for net in solver.system.floating if net not in stage.inputs]
+    if floating:
+        return f"net {floating[0]} has no DC path"
+    found = solver.modes(stage.inputs, stage.output, ideal=ideal)
     if found is None:
         return "the poles of the stage could not be found"
     if stage.topology in TWO_SIDED and len(found) == 2:
@@ -238,6 +242,8 @@ def _loop(bench: Bench, stage: Stage, name: str) -> tuple[numpy.ndarray, numpy.n
         return Unknown("the stage switches: no loop is closed")
     if stage.topology in JUNCTION_TOPOLOGIES:
         return Unknown("the loop depends on which diodes conduct")
+    if stage.topology == "unrecognized" and bench.solver(stage).system.nonlinear:
+        return Unknown("diodes or transistors stand in a loop that is not recognized")
     reason = gain_doubt(bench, stage)
     if reason is not None:
         return Unknown(reason)

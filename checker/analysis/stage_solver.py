@@ -144,7 +144,7 @@ class StageSolver:
         """
         size = self.system.size
         out = self.system.index(output)
-        rows = [self.system.drivers.get(net, self.system.index(net)) for net in inputs]
+        rows = [self.system.mover(net) for net in inputs]
         if size > MODAL_LIMIT or out < 0 or any(row < 0 for row in rows):
             return None
         products = None if ideal else self.bench.gain_bandwidth_hz

@@ -110,6 +110,11 @@ def offset_v(bench: Bench, subject: Subject) -> Figure:
     reason = gain_doubt(bench, stage)
     if reason is not None:
         return Unknown(reason)
+    for name in stage.amplifiers:
+        amplifier = bench.circuit.amplifier(name)
+        for net in (amplifier.plus, amplifier.minus) if amplifier is not None else ():
+            if net in bench.system.floating and net not in stage.inputs:
+                return Unknown(f"net {net} has no DC path: the bias current goes nowhere")
     solver = bench.solver(stage)
     out = solver.system.index(stage.output)
     if out < 0:
@@ -130,10 +135,10 @@ def offset_v(bench: Bench, subject: Subject) -> Figure:
         total += abs(float(weights @ push)) * data.offset_max_v
         bias = data.input_bias_max_a if data.input_bias_max_a is not None else data.input_bias_a
         if bias is None:
-            notes.append(f"bias current of {name} not known: left out of the offset")
+            notes.append("bias currents that are not known are left out of the offset")
             continue
         if data.input_bias_max_a is None:
-            notes.append(f"typical bias current of {name}: its maximum is not known")
+            notes.append("bias currents are typical ones where the part data give no maximum")
         both = sum(float(weights[index]) for index in (row.plus, row.minus) if index >= 0)
         total += abs(both) * abs(bias)
     return Known(total, tuple(notes))

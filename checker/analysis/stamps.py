@@ -77,6 +77,9 @@ def _voltage_source(system: System, part: Part) -> str | None:
         system.drivers.setdefault(part.pins[0].net, row)
     elif one < 0:
         system.drivers.setdefault(part.pins[1].net, row)
+    else:
+        for pin in part.pins[:2]:
+            system.between.setdefault(pin.net, row)
     return None if part.value is not None else _no_value(part)
 
 

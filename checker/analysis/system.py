@@ -85,7 +85,7 @@ class System:
 
     ``unknowns`` names each row: nets first, then ``I(name)`` of the branches. ``floating`` lists nets without a DC
     path to ground; a conductance of 1e-12 S holds them so that the rest can be solved. ``drivers`` gives the branch
-    that holds a net. ``left_out`` are parts that could not be written, with the reason.
+    that holds a net, ``between`` that of a source between two nets, by either. ``left_out`` are parts that could not be written, with the reason.
     """
 
     circuit: Board
@@ -100,12 +100,18 @@ class System:
     capacitors: dict[str, tuple[int, int]]
     drivers: dict[str, int]
     floating: tuple[str, ...]
+    between: dict[str, int] = field(default_factory=dict)
     left_out: dict[str, str] = field(default_factory=dict)
 
     @property
     def size(self) -> int:
         """Number of unknowns."""
         return len(self.unknowns)
+
+    def mover(self, net: str) -> int:
+        """Return the row by which a net can be moved: the branch that holds it, else its own."""
+        held = self.drivers.get(net, self.between.get(net))
+        return self.index(net) if held is None else held
 
     def index(self, net: str | None) -> int:
         """Return the row of a net; -1 for ground and for nets that are not in the system."""

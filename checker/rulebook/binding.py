@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 import math
+import re
 from collections.abc import Callable, Sequence
 from typing import Any
 
 from ..analysis.figures import Known
 from ..errors import Location, Problem
 from ..quantities import nearest_names
-from . import comparing
+from . import arithmetic, comparing
 from . import evaluation as at_work
 from .evaluation import Run, Test
 from .functions import FUNCTIONS, bind_call
@@ -145,7 +146,7 @@ class Binder:
         written = node.words[0]
         found = self.resolve(written)
         if found is None and written == "pi":
-            return Term(node, NUMBER, at_work.constant(math.pi), is_constant=True)
+            return Term(node, NUMBER, arithmetic.constant(math.pi), is_constant=True)
         if found is None:
             self._unknown_name(node, written)
             return None
@@ -156,7 +157,7 @@ class Binder:
             self.report(node, "condition-unit", f"`{name}` is declared with an {trouble}")
             return None
         self.note(level, name)
-        run = at_work.figure(name, level, kind.kind)
+        run = arithmetic.figure(name, level, kind.kind)
         return Term(node, kind, run, at_work.asked(run) if kind.kind == "flag" else None)
 
     def _unknown_name(self, node: Node, written: str) -> None:
@@ -193,15 +194,15 @@ class Binder:
         if value in (float("inf"), float("-inf")):
             self.report(node, "condition-number", f"`{text}` is too large a number")
             return None
-        return Term(node, kind, at_work.constant(value), is_constant=True)
+        return Term(node, kind, arithmetic.constant(value), is_constant=True)
 
     def word(self, node: Node) -> Term | None:
         """Bind a word in quotes."""
-        return Term(node, WORD, at_work.constant(node.words[0][1:-1]), is_constant=True)
+        return Term(node, WORD, arithmetic.constant(node.words[0][1:-1]), is_constant=True)
 
     def truth(self, node: Node) -> Term | None:
         """Bind true or false."""
-        run = at_work.constant(node.words[0] == "true")
+        run = arithmetic.constant(node.words[0] == "true")
         return Term(node, FLAG, run, at_work.asked(run), is_constant=True)
 
     def listing(self, node: Node) -> Term | None:
@@ -228,7 +229,7 @@ class Binder:
                 first = joined(first, each.type)
         runs = [each.run for each in terms]
         kind = WORDS if first.kind == "word" else TermType("numbers", first.unit, first.dimension, first.is_zero)
-        run = at_work.computed(self.words_of(node), lambda *values: values, runs)
+        run = arithmetic.computed(self.words_of(node), lambda *values: values, runs)
         return Term(node, kind, run, is_constant=all(each.is_constant for each in terms))
 
     # Logic
@@ -265,7 +266,7 @@ class Binder:
 
     def flag(self, node: Node, test: Test, *, is_constant: bool = False) -> Term:
         """Return a bound condition."""
-        return Term(node, FLAG, at_work.answered(test), test, is_constant)
+        return Term(node, FLAG, arithmetic.answered(test), test, is_constant)
 
     # Arithmetic
 
@@ -282,7 +283,7 @@ class Binder:
                 return None
             kind = joined(kind, each.type, is_difference=operator == "-")
         signs = [1 if each == "+" else -1 for each in node.words]
-        return self.arithmetic(node, at_work.added(signs), terms, kind)
+        return self.arithmetic(node, arithmetic.added(signs), terms, kind)
 
     def product(self, node: Node) -> Term | None:
         """Bind * and /."""
@@ -294,7 +295,7 @@ class Binder:
         for sign, each in zip(signs, terms[1:], strict=True):
             kind = multiplied(kind, each.type, sign)
         kind = TermType(kind.kind, kind.unit, kind.dimension)
-        return self.arithmetic(node, at_work.multiplied(signs), terms, kind)
+        return self.arithmetic(node, arithmetic.multiplied(signs), terms, kind)
 
     def power(self, node: Node) -> Term | None:
         """Bind ** by a whole number."""
@@ -330,18 +331,18 @@ class Binder:
         self, node: Node, function: Callable[..., Any], terms: Sequence[Term], kind: TermType
     ) -> Term | None:
         """Return the term that computes ``function`` of bound terms; of written numbers it is computed at once."""
-        run = at_work.computed(self.words_of(node), function, [each.run for each in terms])
+        run = arithmetic.computed(self.words_of(node), function, [each.run for each in terms])
         if not all(each.is_constant for each in terms):
             return Term(node, kind, run)
         found = run(())
         if not isinstance(found, Known):
             self.report(node, "condition-number", found.unknowns[0].reason)
             return None
-        return Term(node, kind, at_work.constant(found.value), is_constant=True)
+        return Term(node, kind, arithmetic.constant(found.value), is_constant=True)
 
     def arithmetic_of(self, node: Node, function: Callable[..., Any], runs: Sequence[Run], kind: TermType) -> Term:
         """Return the term that computes ``function`` of terms that are evaluated already."""
-        return Term(node, kind, at_work.computed(self.words_of(node), function, runs))
+        return Term(node, kind, arithmetic.computed(self.words_of(node), function, runs))
 
     def entry(self, node: Node) -> Term | None:
         """Bind a look-up in a table by name."""
@@ -359,7 +360,7 @@ class Binder:
             self.report(key.node, "condition-kind", what, expected="a word", cure=f'{text}["…"]')
             return None
         kind = TermType("number", table.type.unit, table.type.dimension)
-        return Term(node, kind, at_work.entry(self.words_of(node), table.run, key.run))
+        return Term(node, kind, arithmetic.entry(self.words_of(node), table.run, key.run))
 
     def call(self, node: Node) -> Term | None:
         """Bind a function."""
@@ -369,20 +370,23 @@ class Binder:
 def place_in(text: str, where: Location, start: int, end: int) -> Location:
     """Return the place of a stretch of a condition, in the rule file where its line can be recognized.
 
-    ``where`` is the place of the text in its file: the line of its key. Where that line holds the text, columns count
-    in the file's own line; else the excerpt is the line of the condition and columns count in it.
+    ``where`` is the place of the text in its file: the line of its key. Where the excerpt of that line holds the text,
+    columns count in the file's own line; else the excerpt is the line of the condition and columns count in it.
     """
     row_start = text.rfind("\n", 0, start) + 1
     row_end = text.find("\n", row_start)
     row = text[row_start : row_end if row_end >= 0 else len(text)]
-    column = start - row_start
+    column = start - row_start + 1
     length = max(1, min(end, row_start + len(row)) - start)
     line = where.line + text.count("\n", 0, start)
-    if where.excerpt is not None and "\n" not in text and where.excerpt.count(text) == 1:
-        return Location(where.file, line, where.excerpt.index(text) + column + 1, where.excerpt, length)
-    if where.excerpt is not None and where.excerpt.rstrip().endswith(('"""', "'''")):
+    written = where.excerpt
+    if written is not None and row_start == 0:
+        held = re.search(rf"(?<![\w.]){re.escape(row)}(?![\w.])", written) if row.strip() else None
+        if held is not None:
+            return Location(where.file, line, held.start() + column, written, length)
+    if written is not None and written.rstrip().endswith(('"""', "'''")):
         line += 1  # the text begins on the line below the opening quotes
-    return Location(where.file, line, column + 1, row, length)
+    return Location(where.file, line, column, row, length)
 
 
 def _unit_hint(text: str) -> str:

@@ -8,16 +8,15 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
 from ..quantities import PLAIN, nearest_names
+from . import arithmetic
 from . import evaluation as at_work
 from .comparing import check_units
+from .questions import bind_count, bind_list, bind_question, gathered
 from .syntax import Node
-from .terms import NUMBER, WORDS, Term, TermType, goes_with, joined, raised
+from .terms import NUMBER, Term, TermType, goes_with, joined, raised
 
 if TYPE_CHECKING:
     from .binding import Binder
-
-# A question about members inside one about members is asked once for each pair; deeper ones would cost too much.
-MAX_QUANTIFIERS = 2
 
 
 @dataclass(frozen=True, slots=True)
@@ -55,9 +54,6 @@ def _head(node: Node) -> Node:
     return Node(node.what, node.start, node.start + len(node.words[0]))
 
 
-# Numbers --------------------------------------------------------------------------------------------------------
-
-
 def _magnitude(binder: Binder, node: Node) -> Term | None:
     term = binder.bind_number(node.parts[0])
     if term is None:
@@ -74,19 +70,19 @@ def _root(binder: Binder, node: Node) -> Term | None:
 
 def _sqrt(value: float) -> float:
     if value < 0:
-        raise at_work.NoFigure("takes the square root of a negative figure")
+        raise arithmetic.NoFigure("takes the square root of a negative figure")
     return math.sqrt(value)
 
 
 def _log10(value: float) -> float:
     if value <= 0:
-        raise at_work.NoFigure("takes the logarithm of a figure that is not above zero")
+        raise arithmetic.NoFigure("takes the logarithm of a figure that is not above zero")
     return math.log10(value)
 
 
 def _decibel(value: float) -> float:
     if value == 0:
-        raise at_work.NoFigure("takes the level of a zero in dB")
+        raise arithmetic.NoFigure("takes the level of a zero in dB")
     return 20.0 * math.log10(abs(value))
 
 
@@ -116,7 +112,7 @@ def _extreme(binder: Binder, node: Node) -> Term | None:
     if len(node.parts) in {2, 3} and first.what == "name" and binder.resolve(first.words[0]) is None:
         relation = binder.relation(first.words[0])
         if relation is not None:
-            inside = _inside(binder, node)
+            inside = gathered(binder, node)
             if inside is None:
                 return None
             term, run = inside
@@ -151,19 +147,19 @@ def _extreme(binder: Binder, node: Node) -> Term | None:
 def _figures(group: Any) -> tuple[float, ...]:
     values = tuple(group.values()) if isinstance(group, Mapping) else tuple(group)
     if any(isinstance(each, bool) or not isinstance(each, int | float) or math.isnan(each) for each in values):
-        raise at_work.NoFigure("rests on a figure that is not known")
+        raise arithmetic.NoFigure("rests on a figure that is not known")
     return values
 
 
 def _smallest(values: tuple[float, ...]) -> float:
     if not values:
-        raise at_work.NoFigure("has no figures to choose from")
+        raise arithmetic.NoFigure("has no figures to choose from")
     return min(values)
 
 
 def _largest(values: tuple[float, ...]) -> float:
     if not values:
-        raise at_work.NoFigure("has no figures to choose from")
+        raise arithmetic.NoFigure("has no figures to choose from")
     return max(values)
 
 
@@ -203,127 +199,10 @@ def _choice(binder: Binder, node: Node) -> Term | None:
         kind = joined(first.type, second.type)
     else:
         kind = TermType(kind.kind)
-    run = at_work.chosen(test.test, first.run, second.run)
     constant = test.is_constant and first.is_constant and second.is_constant
-    return Term(node, kind, run, at_work.asked(run) if kind.kind == "flag" else None, constant)
-
-
-# Related subjects -----------------------------------------------------------------------------------------------
-
-
-class _Members:
-    """The names of a relation's members, in force while the terms inside a question are bound."""
-
-    def __init__(self, binder: Binder, node: Node) -> None:
-        self.binder = binder
-        self.node = node
-        self.relation = ""
-        self.level = -1
-
-    def enter(self) -> bool:
-        binder, first = self.binder, self.node.parts[0]
-        name = self.node.words[0]
-        if first.what != "name":
-            what = f"`{binder.words_of(first)}` is no relation"
-            binder.report(first, "condition-relation", what, expected=FUNCTIONS[name].usage)
-            return False
-        self.relation = first.words[0]
-        found = binder.relation(self.relation)
-        if found is None:
-            known = [each for scope, _ in reversed(binder.scopes) for each in scope.known() if scope.related(each)]
-            what = f"unknown relation `{self.relation}`"
-            if binder.resolve(self.relation) is not None:
-                what = f"`{self.relation}` is a figure, not a relation"
-            cure = f"relations here: {', '.join(dict.fromkeys(known))}" if known else "this subject has no relations"
-            nearest = nearest_names(self.relation, known)
-            binder.report(first, "condition-relation", what, nearest=nearest, cure=None if nearest else cure)
-            return False
-        if len(binder.scopes) > MAX_QUANTIFIERS:
-            what = f"questions about members nested deeper than {MAX_QUANTIFIERS}"
-            binder.report(first, "condition-too-deep", what, cure="ask the inner question in a measure of the member")
-            return False
-        self.level, scope = found
-        binder.note(self.level, self.relation)
-        prefix = binder.scopes[self.level][1]
-        binder.scopes.append((scope, f"{prefix}.{self.relation}" if prefix else self.relation))
-        return True
-
-    def bind(self, node: Node, *, as_test: bool) -> Term | None:
-        """Bind a term of a member; one that does not speak of the member is a mistake."""
-        binder = self.binder
-        own = len(binder.scopes) - 1
-        held, binder.levels = binder.levels, set()
-        before = len(binder.problems)
-        term = binder.bind_test(node) if as_test else binder.bind(node)
-        speaks, binder.levels = own in binder.levels, held | binder.levels
-        if term is not None and not speaks and len(binder.problems) == before:
-            what = f"`{binder.words_of(node)}` does not speak of the {self.relation}"
-            names = ", ".join(binder.scopes[own][0].known()[:10])
-            cure = f"count({self.relation}) asks how many there are" if as_test else None
-            expected = f"a figure of each member: {names}"
-            binder.report(node, "condition-relation", what, expected=expected, cure=cure)
-            return None
-        return term
-
-    def leave(self) -> None:
-        own = len(self.binder.scopes) - 1
-        self.binder.levels.discard(own)
-        self.binder.scopes.pop()
-
-
-def _question(binder: Binder, node: Node) -> Term | None:
-    """Bind any and all."""
-    members = _Members(binder, node)
-    if not members.enter():
-        return None
-    term = members.bind(node.parts[1], as_test=True)
-    members.leave()
-    if term is None or term.test is None:
-        return None
-    return binder.flag(node, at_work.quantified(members.relation, members.level, term.test, node.words[0] == "any"))
-
-
-def _number_of(binder: Binder, node: Node) -> Term | None:
-    """Bind count."""
-    members = _Members(binder, node)
-    if not members.enter():
-        return None
-    test = None
-    if len(node.parts) == 2:
-        term = members.bind(node.parts[1], as_test=True)
-        if term is None:
-            members.leave()
-            return None
-        test = term.test
-    members.leave()
-    return Term(node, NUMBER, at_work.counted(members.relation, members.level, test))
-
-
-def _inside(binder: Binder, node: Node) -> tuple[Term, at_work.Run] | None:
-    """Bind the term (and the test) that is gathered over the members of a relation."""
-    members = _Members(binder, node)
-    if not members.enter():
-        return None
-    term = members.bind(node.parts[1], as_test=False)
-    test = members.bind(node.parts[2], as_test=True) if len(node.parts) == 3 else None
-    members.leave()
-    if term is None or (len(node.parts) == 3 and test is None):
-        return None
-    return term, at_work.gathered(members.relation, members.level, term.run, test.test if test else None)
-
-
-def _list(binder: Binder, node: Node) -> Term | None:
-    """Bind list: a word of each member of a relation."""
-    inside = _inside(binder, node)
-    if inside is None:
-        return None
-    term, run = inside
-    if term.type.kind not in {"word", "number"}:
-        what = f"`{binder.words_of(term.node)}` is {term.type}, listed for each member"
-        binder.report(term.node, "condition-kind", what, expected="a word or a number")
-        return None
-    kind = WORDS if term.type.kind == "word" else TermType("numbers", term.type.unit, term.type.dimension)
-    return Term(node, kind, run)
+    if first.test is not None and second.test is not None:
+        return binder.flag(node, at_work.chosen_test(test.test, first.test, second.test), is_constant=constant)
+    return Term(node, kind, arithmetic.chosen(test.test, first.run, second.run), is_constant=constant)
 
 
 FUNCTIONS: dict[str, Function] = {
@@ -336,8 +215,10 @@ FUNCTIONS: dict[str, Function] = {
     "db": Function("db(x)", "level of a ratio's magnitude, 20 * log10", 1, 1, _logarithm),
     "length": Function("length(list)", "how many a list or table holds", 1, 1, _length),
     "if": Function("if(condition, x, y)", "x where the condition is true, else y", 3, 3, _choice),
-    "any": Function("any(relation, condition)", "true for one member at least", 2, 2, _question),
-    "all": Function("all(relation, condition)", "true for every member, and of none", 2, 2, _question),
-    "count": Function("count(relation) or count(relation, condition)", "how many members", 1, 2, _number_of),
-    "list": Function("list(relation, word) or list(relation, word, condition)", "a word of each member", 2, 3, _list),
+    "any": Function("any(relation, condition)", "true for one member at least", 2, 2, bind_question),
+    "all": Function("all(relation, condition)", "true for every member, and of none", 2, 2, bind_question),
+    "count": Function("count(relation) or count(relation, condition)", "how many members", 1, 2, bind_count),
+    "list": Function(
+        "list(relation, word) or list(relation, word, condition)", "a word of each member", 2, 3, bind_list
+    ),
 }

@@ -365,8 +365,11 @@ def _rule(row: dict[str, Any]) -> Rule:
 
 
 def _check_fix(name: str | None, where: Location) -> None:
-    from .remedies import FIXES
+    if name is None:
+        return
+    from .remedies import known_fixes
 
-    if name is not None and name not in FIXES:
-        near = nearest_names(name, FIXES)
+    fixes = known_fixes()
+    if name not in fixes:
+        near = nearest_names(name, fixes)
         raise RulePackError(Problem("fix-unknown", f"no computed remedy is named `{name}`", where, nearest=near))

@@ -84,7 +84,7 @@ def test_e24_has_the_values_of_the_standard():
 
 @pytest.mark.parametrize(
     ("value", "series", "expected"),
-    [(51700, "E96", 51100), (8.2e3, "E12", 8.2e3), (4.99, "E24", 5.1), (0.98e-9, "E6", 1e-9)],
+    [(51600, "E96", 51100), (8.2e3, "E12", 8.2e3), (4.99, "E24", 5.1), (0.98e-9, "E6", 1e-9)],
 )
 def test_nearest_preferred_value(value, series, expected):
     assert nearest_preferred(value, series) == pytest.approx(expected, rel=1e-12)
