@@ -150,6 +150,19 @@ def test_place_is_that_of_the_rule_file_when_its_line_is_known():
     assert (place.file, place.line, place.column, place.excerpt) == ("x.toml", 12, 12, row)
 
 
+def test_place_in_a_placeholder_is_that_of_the_message():
+    row = 'message = "{gain} of {suply_v} for {subject}"'
+    place = problems_of("suply_v", Location("x.toml", 3, excerpt=row))[0].location
+    assert place.column == row.index("suply_v") + 1
+
+
+def test_place_falls_back_to_the_condition_where_the_line_holds_it_in_another_spelling():
+    row = 'require = "suply_v > 5 V and topology == \\"comparator\\""'
+    text = 'suply_v > 5 V and topology == "comparator"'
+    place = problems_of(text, Location("x.toml", 3, excerpt=row))[0].location
+    assert (place.column, place.excerpt) == (1, text)
+
+
 def test_place_in_a_text_of_many_lines_counts_them():
     text = "gain > 1\nand suply_v > 5 V"
     place = problems_of(text, Location("x.toml", 12))[0].location

@@ -18,6 +18,7 @@ from ampwarden.rulebook.conditions import Comparison, compile_condition, compile
     [
         ("10 nF", 1e-8, "F"),
         ("10nF", 1e-8, "F"),
+        ("10\u00a0nF", 1e-8, "F"),
         ("4.7 kohm", 4700.0, "ohm"),
         ("4.7 kΩ", 4700.0, "ohm"),
         ("1 Mohm", 1e6, "ohm"),
@@ -146,6 +147,7 @@ def test_infinite_figures_compare_as_they_should():
         ("output_v > 3 V or supply_v > 20 V", Comparison(1.0, 3.0, "V", ">")),
         ('topology == "comparator" or output_v > 3 V', Comparison(1.0, 3.0, "V", ">")),
         ("if(supply_v > 5 V, output_v, supply_v) > 3 V", Comparison(1.0, 3.0, "V", ">")),
+        ("if(supply_v > 5 V, output_v > 3 V, supply_v > 3 V)", Comparison(1.0, 3.0, "V", ">")),
     ],
 )
 def test_false_verdict_names_the_comparison_that_decided(text, comparison):
@@ -369,6 +371,12 @@ def test_question_inside_a_question_sees_both_levels():
 def test_false_question_names_the_members_comparison():
     found = verdict("all(input_pins, resistance_ohm < 1 Mohm)", members={"input_pins": (HELD, OPEN)})
     assert found.comparison == Comparison(math.inf, 1e6, "ohm", "<")
+
+
+def test_where_no_member_passes_the_nearest_to_the_limit_is_named():
+    pins = tuple(Figures(gain=each) for each in (1.0, 9.0, 5.0))
+    found = verdict("any(input_pins, gain >= 10)", members={"input_pins": pins})
+    assert (found.value, found.comparison) == (False, Comparison(9.0, 10.0, "", ">="))
 
 
 def test_list_of_members_keeps_their_order():
