@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-import re
 from collections.abc import Callable, Sequence
 from typing import Any
 
@@ -14,7 +13,7 @@ from . import arithmetic, comparing
 from . import evaluation as at_work
 from .evaluation import Run, Test
 from .functions import FUNCTIONS, bind_call
-from .syntax import Node
+from .syntax import Node, place_in
 from .terms import (
     FLAG,
     NUMBER,
@@ -29,6 +28,7 @@ from .terms import (
     named_type,
     raised,
     read_quantity,
+    unit_hint,
 )
 
 MAX_EXPONENT = 9
@@ -187,7 +187,7 @@ class Binder:
             value, kind = read_quantity(text)
         except ValueError as trouble:
             what, _, near = str(trouble).partition("; known units near it: ")
-            cure = _unit_hint(text)
+            cure = unit_hint(text)
             expected = None if cure.startswith("add") else f"a unit such as {near}"
             self.report(node, "condition-unit", f"`{text}`: {what}", expected=expected, cure=cure)
             return None
@@ -365,39 +365,6 @@ class Binder:
     def call(self, node: Node) -> Term | None:
         """Bind a function."""
         return bind_call(self, node)
-
-
-def place_in(text: str, where: Location, start: int, end: int) -> Location:
-    """Return the place of a stretch of a condition, in the rule file where its line can be recognized.
-
-    ``where`` is the place of the text in its file: the line of its key. Where the excerpt of that line holds the text,
-    columns count in the file's own line; else the excerpt is the line of the condition and columns count in it.
-    """
-    row_start = text.rfind("\n", 0, start) + 1
-    row_end = text.find("\n", row_start)
-    row = text[row_start : row_end if row_end >= 0 else len(text)]
-    column = start - row_start + 1
-    length = max(1, min(end, row_start + len(row)) - start)
-    line = where.line + text.count("\n", 0, start)
-    written = where.excerpt
-    if written is not None and row_start == 0:
-        held = re.search(rf"(?<![\w.]){re.escape(row)}(?![\w.])", written) if row.strip() else None
-        if held is not None:
-            return Location(where.file, line, held.start() + column, written, length)
-    if written is not None and written.rstrip().endswith(('"""', "'''")):
-        line += 1  # the text begins on the line below the opening quotes
-    return Location(where.file, line, column, row, length)
-
-
-def _unit_hint(text: str) -> str:
-    unit = text.lstrip("0123456789.").strip()
-    if unit[:1] in {"k", "M", "G", "m", "u", "n", "p", "µ", "f", "T", "g"} and len(unit.rstrip("0123456789")) == 1:
-        return f"add the unit behind the prefix, such as {unit[0]}ohm, {unit[0]}V or {unit[0]}F"
-    if "/" in unit:
-        return "put blanks around / to divide by a figure"
-    if unit.casefold() in {"meg", "megohm"}:
-        return "write Mohm"
-    return "write * between a number and a figure"
 
 
 _BINDERS: dict[str, Callable[[Binder, Node], Term | None]] = {

@@ -9,7 +9,7 @@ from ..quantities import nearest_names
 from . import evaluation as at_work
 from .evaluation import Test
 from .syntax import Node
-from .terms import WORD, Term, goes_with, joined, unit_cure
+from .terms import WORD, Term, compared_unit, goes_with, unit_cure
 
 if TYPE_CHECKING:
     from .binding import Binder
@@ -52,7 +52,7 @@ def _pair(binder: Binder, node: Node, operator: str, left: Term, right: Term, *,
     if kinds == ("number", "number"):
         if not check_units(binder, left, right, "compared with"):
             return None
-        unit = joined(left.type, right.type).unit
+        unit = compared_unit(left.type, right.type)
         turned = measures_right or (left.is_constant and not right.is_constant)
         return at_work.compared(operator, left.run, right.run, unit, measures_right=turned)
     if kinds in {("word", "word"), ("flag", "flag")}:
@@ -145,7 +145,7 @@ def bind_within(binder: Binder, node: Node) -> Term | None:
             what = f"the range {text[0]} .. {text[1]} is empty"
             binder.report(low.node, "condition-range", what, cure=f"{text[1]} .. {text[0]}")
             return None
-    unit = joined(figure.type, joined(low.type, high.type)).unit
+    unit = compared_unit(figure.type, low.type, high.type)
     constant = all(each.is_constant for each in terms)
     if node.what == "outside":
         return binder.flag(node, at_work.outside(figure.run, low.run, high.run, unit), is_constant=constant)

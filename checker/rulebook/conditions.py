@@ -10,9 +10,9 @@ from dataclasses import dataclass
 
 from ..analysis.figures import Figure, Known, Unknown
 from ..errors import ConditionError, Location, Problem
-from .binding import Binder, place_in
+from .binding import Binder
 from .evaluation import Comparison, Missing, Reading, Run, Test, Verdict
-from .syntax import SyntaxTrouble, parse_syntax, prepare
+from .syntax import SyntaxTrouble, parse_syntax, place_in, prepare
 from .terms import NameType, Scope, Term
 
 __all__ = [

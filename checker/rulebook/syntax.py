@@ -12,6 +12,8 @@ from dataclasses import dataclass
 from functools import lru_cache
 from typing import TYPE_CHECKING, Any
 
+from ..errors import Location
+
 if TYPE_CHECKING:
     from lark import Lark
 
@@ -233,6 +235,28 @@ def _plain(tree: Any, depth: int) -> Node:
         else:
             words.append(" ".join(str(child).split()))
     return Node(tree.data, start, end, tuple(words), tuple(parts))
+
+
+def place_in(text: str, where: Location, start: int, end: int) -> Location:
+    """Return the place of a stretch of a condition, in the rule file where its line can be recognized.
+
+    ``where`` is the place of the text in its file: the line of its key. Where the excerpt of that line holds the text,
+    columns count in the file's own line; else the excerpt is the line of the condition and columns count in it.
+    """
+    row_start = text.rfind("\n", 0, start) + 1
+    row_end = text.find("\n", row_start)
+    row = text[row_start : row_end if row_end >= 0 else len(text)]
+    column = start - row_start + 1
+    length = max(1, min(end, row_start + len(row)) - start)
+    line = where.line + text.count("\n", 0, start)
+    written = where.excerpt
+    if written is not None and row_start == 0:
+        held = re.search(rf"(?<![\w.]){re.escape(row)}(?![\w.])", written) if row.strip() else None
+        if held is not None:
+            return Location(where.file, line, held.start() + column, written, length)
+    if written is not None and written.rstrip().endswith(('"""', "'''")):
+        line += 1  # the text begins on the line below the opening quotes
+    return Location(where.file, line, column, row, length)
 
 
 def _row(node: Node) -> list[Any]:

@@ -182,6 +182,14 @@ def joined(left: TermType, right: TermType, *, is_difference: bool = False) -> T
     return TermType("number", "" if left.dimension == PLAIN else left.unit, left.dimension)
 
 
+def compared_unit(*sides: TermType) -> str:
+    """Return the unit in which a reader sees figures that are held against each other."""
+    unit = sides[0]
+    for each in sides[1:]:
+        unit = joined(unit, each)
+    return "%" if unit.unit == "" and any(each.unit == "%" for each in sides) else unit.unit
+
+
 def multiplied(left: TermType, right: TermType, sign: int = 1) -> TermType:
     """Return the type of a product (``sign`` 1) or a quotient (-1)."""
     a, b = left.dimension, right.dimension
@@ -219,3 +227,15 @@ def unit_cure(left: TermType, right: TermType, right_text: str, *, is_written: b
         if unit in _WORDS and unit:
             return f"{verb} `{right_text}` by {_WORDS[unit]}"
     return None
+
+
+def unit_hint(text: str) -> str:
+    """Return what the author of a number with an unknown unit most likely meant."""
+    unit = text.lstrip("0123456789.").strip()
+    if unit[:1] in {"k", "M", "G", "m", "u", "n", "p", "µ", "f", "T", "g"} and len(unit.rstrip("0123456789")) == 1:
+        return f"add the unit behind the prefix, such as {unit[0]}ohm, {unit[0]}V or {unit[0]}F"
+    if "/" in unit:
+        return "put blanks around / to divide by a figure"
+    if unit.casefold() in {"meg", "megohm"}:
+        return "write Mohm"
+    return "write * between a number and a figure"

@@ -142,6 +142,8 @@ def test_infinite_figures_compare_as_they_should():
         ("output_v not in 0.9 V .. 5 V", Comparison(1.0, 0.9, "V", "<")),
         ("output_v not in 0 V .. 1.1 V", Comparison(1.0, 1.1, "V", ">")),
         ("supply_v > 0 and output_v > 3 V and output_v > 9 V", Comparison(1.0, 3.0, "V", ">")),
+        ("a / b < 1 %", Comparison(0.5, 0.01, "%", "<")),
+        ("a / b in 0 .. 1 %", Comparison(0.5, 0.01, "%", "<=")),
         ("not supply_v > 10 V", Comparison(12.0, 10.0, "V", "<=")),
         ("not (supply_v > 10 V and output_v > 0.5 V)", Comparison(12.0, 10.0, "V", "<=")),
         ("output_v > 3 V or supply_v > 20 V", Comparison(1.0, 3.0, "V", ">")),
@@ -151,7 +153,7 @@ def test_infinite_figures_compare_as_they_should():
     ],
 )
 def test_false_verdict_names_the_comparison_that_decided(text, comparison):
-    found = verdict(text, supply_v=12.0, output_v=1.0, headroom=0.5, topology="voltage-follower")
+    found = verdict(text, supply_v=12.0, output_v=1.0, headroom=0.5, a=1.0, b=2.0, topology="voltage-follower")
     assert (found.value, found.comparison) == (False, comparison)
 
 
