@@ -169,21 +169,16 @@ class Bench:
         circuit = self.circuit
         forced: dict[str, float] = {}
         for net, rail in circuit.rails.items():
-            if (
-                rail.volts is not None
-                and not circuit.is_held(net)
-                and rail.origin != "filtered"
-                and net != circuit.ground
-            ):
-                if not circuit.amplifiers_at(net):
-                    forced[net] = rail.volts
+            is_drawn = circuit.is_held(net) or rail.origin == "filtered" or bool(circuit.amplifiers_at(net))
+            if rail.volts is not None and not is_drawn and net != circuit.ground:
+                forced[net] = rail.volts
         for net in circuit.grounds:
             if net != circuit.ground and not circuit.is_held(net):
                 forced[net] = 0.0
         for net, signal in circuit.signals.items():
-            if signal.source is None and not signal.is_current and not circuit.is_stiff(net):
-                if not circuit.amplifiers_at(net) and signal.low is not None and signal.high is not None:
-                    forced[net] = (signal.low + signal.high) / 2
+            is_drawn = signal.source is not None or circuit.is_stiff(net) or bool(circuit.amplifiers_at(net))
+            if not is_drawn and not signal.is_current and signal.low is not None and signal.high is not None:
+                forced[net] = (signal.low + signal.high) / 2
         return forced
 
     def source_overrides(self) -> dict[int, float]:

@@ -75,9 +75,9 @@ def spread_doubts(bench: Bench, origins: dict[str, str], *, held: Iterable[str] 
                 if other in found or other in stopped or circuit.is_stiff(other) or other in bench.system.drivers:
                     continue
                 waiting.append((other, reason))
-        for each in controlled.get(net, ()):
-            if each not in found and each not in stopped and not circuit.is_ground(each):
-                waiting.append((each, reason))
+        for moved in controlled.get(net, ()):
+            if moved not in found and moved not in stopped and not circuit.is_ground(moved):
+                waiting.append((moved, reason))
     return found
 
 

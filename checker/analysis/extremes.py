@@ -91,7 +91,6 @@ class Extremes:
 
     def _contribution(self, index: int, name: str, signal: Signal) -> Range | Unknown:
         """Return how far one signal moves an unknown below and above its value at rest."""
-        bench = self.bench
         at_dc = self._gain(name, index)
         in_band = self._gain(name, index, midband=True)
         if abs(at_dc) < NEGLIGIBLE and abs(in_band) < NEGLIGIBLE:

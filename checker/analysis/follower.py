@@ -51,16 +51,17 @@ def far_end(bench: Bench, stage: Stage) -> tuple[str, str] | None:
         return None
     circuit = bench.circuit
     taken = bench.stages_of_parts
+    own_inputs = {
+        net for each in circuit.amplifiers if each.name in stage.amplifiers for net in (each.plus, each.minus)
+    }
     found = []
     for part in circuit.parts_on(stage.output):
         if part.kind is not PartKind.RESISTOR or part.designator in taken or part.value is None:
             continue
         other = part.pins[1].net if part.pins[0].net == stage.output else part.pins[0].net
-        if 1e-3 < part.value <= ISOLATION_OHM and not circuit.is_stiff(other) and not circuit.amplifiers_at(other):
-            if not any(
-                other in (each.plus, each.minus) for each in circuit.amplifiers if each.name in stage.amplifiers
-            ):
-                found.append((part.designator, other))
+        is_free = not circuit.is_stiff(other) and not circuit.amplifiers_at(other) and other not in own_inputs
+        if 1e-3 < part.value <= ISOLATION_OHM and is_free:
+            found.append((part.designator, other))
     return found[0] if len(found) == 1 else None
 
 

@@ -131,7 +131,7 @@ def _amplifiers(bench: Bench) -> Iterator[Subject]:
 
 def supply_pins(bench: Bench) -> tuple[SupplyPin, ...]:
     """Return the supply pins of all packages; packages that show none have none."""
-    found = []
+    found: list[SupplyPin] = []
     for designator, amplifiers in packages(bench).items():
         for role, nets in (
             ("V+", dict.fromkeys(each.supply_plus for each in amplifiers)),

@@ -59,9 +59,9 @@ def _crossing(bench: Bench, stage: Stage, state: str) -> float | Unknown:
     )
     right = list(system.sources)
     others = bench.solution.states
-    for each in system.amplifiers:
-        held = (OFF if is_off else state) if each is row else others[each.amplifier.name]
-        amplifier_entries(each, held, entries, right)
+    for other in system.amplifiers:
+        held = (OFF if is_off else state) if other is row else others[other.amplifier.name]
+        amplifier_entries(other, held, entries, right)
     for part_row, value in bench.source_overrides().items():
         right[part_row] = value
     at = driver if driver is not None else system.index(net)

@@ -85,7 +85,8 @@ class System:
 
     ``unknowns`` names each row: nets first, then ``I(name)`` of the branches. ``floating`` lists nets without a DC
     path to ground; a conductance of 1e-12 S holds them so that the rest can be solved. ``drivers`` gives the branch
-    that holds a net, ``between`` that of a source between two nets, by either. ``left_out`` are parts that could not be written, with the reason.
+    that holds a net, ``between`` that of a source between two nets, by either. ``left_out`` are parts that could not
+    be written, with the reason.
     """
 
     circuit: Board

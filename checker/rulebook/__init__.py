@@ -8,7 +8,7 @@ from .findings import Finding, NetlistReview, Review, Unevaluated
 
 if TYPE_CHECKING:
     from .apply import Outcome, apply_pack
-    from .pack import Pack, Rule, load_pack
+    from .pack import Pack, load_pack
 
 __all__ = [
     "Finding",
@@ -21,7 +21,7 @@ __all__ = [
     "load_pack",
 ]
 
-_HOMES = {"Outcome": "apply", "apply_pack": "apply", "Pack": "pack", "Rule": "pack", "load_pack": "pack"}
+_HOMES = {"Outcome": "apply", "apply_pack": "apply", "Pack": "pack", "load_pack": "pack"}
 
 
 def __getattr__(name: str) -> Any:

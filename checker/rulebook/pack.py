@@ -243,7 +243,7 @@ def read_rule(document: TomlDocument) -> dict[str, Any]:
     for plain in plain_cases:
         texts += [plain["when"], plain["require"], plain["measured"], plain["limit"], plain["parts"], plain["nets"]]
         for key in ("message", "remedy", "otherwise"):
-            texts += placeholders(plain[key] or "")
+            texts += placeholders(str(plain[key] or ""))
     return {
         "name": name,
         "title": data["title"],

@@ -1,7 +1,7 @@
 """Boards drawn as an expert would raise no error and no warning; broken in one place, each is found and named."""
 
 import pytest
-from boards.boards import breaks, good_boards, intent_text
+from boards.board_files import breaks, good_boards, intent_text
 
 from ampwarden.pipeline import review_text
 from ampwarden.rulebook import load_pack

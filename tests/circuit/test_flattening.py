@@ -1,7 +1,7 @@
 """Hierarchy to flat parts: names, scopes, bounds. Meaning of the lines: netlist reference, SPICE3 3f3 manual."""
 
 import pytest
-from boards import IDEAL, circuit_of, deck
+from circuit.decks import IDEAL, circuit_of, deck
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
