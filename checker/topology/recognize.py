@@ -39,7 +39,7 @@ def find_stages(circuit: Circuit, templates: Sequence[Template] | None = None) -
     single = [each for each in known if len(each.amplifiers) == 1]
     for templates_of_size in (several, single):
         for amplifier in circuit.amplifiers:
-            if amplifier.name in taken:
+            if amplifier.name in taken or amplifier.kind in _PACKAGED:
                 continue
             for template in templates_of_size:
                 match = matcher.match(template, amplifier)
