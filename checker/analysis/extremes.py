@@ -92,7 +92,10 @@ class Extremes:
     def _contribution(self, index: int, name: str, signal: Signal) -> Range | Unknown:
         """Return how far one signal moves an unknown below and above its value at rest."""
         at_dc = self._gain(name, index)
-        in_band = self._gain(name, index, midband=True)
+        ends = sorted({min(signal.frequencies_hz), max(signal.frequencies_hz)}) if signal.frequencies_hz else []
+        in_band = max((self._gain(name, index, hertz) for hertz in ends), key=abs, default=0j)
+        if not ends:
+            in_band = self._gain(name, index, midband=True)
         if abs(at_dc) < NEGLIGIBLE and abs(in_band) < NEGLIGIBLE:
             return Range(0.0, 0.0, 0.0)
         if signal.low is None or signal.high is None:
@@ -102,9 +105,8 @@ class Extremes:
         if swing == 0.0:
             shift = at_dc.real * (mean - rest)
             return Range(shift, shift, 0.0)
-        if signal.frequencies_hz:
-            ends = {min(signal.frequencies_hz), max(signal.frequencies_hz)}
-            size = max(abs(self._gain(name, index, hertz)) for hertz in ends) * swing
+        if ends:
+            size = abs(in_band) * swing
             shift = at_dc.real * (mean - rest) if abs(mean - rest) > 1e-12 * (1 + abs(mean)) else 0.0
             return Range(shift - size, shift + size, 0.0)
         if abs(at_dc) > INTEGRATING and abs(at_dc) > 10 * abs(in_band):

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from ..circuit.parts import PartKind
@@ -25,24 +26,36 @@ ISOLATION_OHM = 330.0  # a series resistor up to here isolates a load; a larger 
 AT_INPUT = 0.98  # share of the signal at the amplifier's input below which the network ahead of it is the cause
 
 
-def _passed(bench: Bench, stage: Stage) -> tuple[float, float | None, float | None] | str:
-    """Return pass-band gain to the output, gain at the signal's frequencies, gain to the load behind a series resistor."""
+@dataclass(frozen=True, slots=True)
+class Passage:
+    """Gains of a follower-type stage: in its pass band, what its amplifier's bandwidth leaves of it, behind its series resistor."""
+
+    band: float
+    by_bandwidth: float
+    loaded: float
+
+
+def _passage(bench: Bench, stage: Stage) -> Passage | str:
     if stage.topology not in FOLLOWERS:
         return "the stage is no follower"
-    band = input_gains(bench, stage, midband=True)
-    if isinstance(band, str):
-        return band
-    at_signal = None
+    gains = input_gains(bench, stage, midband=True)
+    if isinstance(gains, str):
+        return gains
+    band = abs(gains[0])
+    solver = bench.solver(stage)
+    by_bandwidth = loaded = band
     frequencies = signal_frequencies(bench, stage)
-    if frequencies:
-        found = input_gains(bench, stage, hertz=frequencies[-1])
-        at_signal = None if isinstance(found, str) else abs(found[0])
-    loaded = None
+    if frequencies and stage.output is not None:
+        # a filter ahead of the input is meant; only what the amplifier itself loses counts
+        real = solver.gains(stage.inputs, stage.output, hertz=frequencies[-1])
+        ideal = solver.gains(stage.inputs, stage.output, hertz=frequencies[-1], ideal=True)
+        if real is not None and ideal is not None and abs(ideal[0]) > 1e-9:
+            by_bandwidth = band * abs(complex(real[0])) / abs(complex(ideal[0]))
     far = far_end(bench, stage)
     if far is not None:
-        gains = bench.solver(stage).gains(stage.inputs, far[1], midband=True)
-        loaded = None if gains is None else abs(complex(gains[0]))
-    return abs(band[0]), at_signal, loaded
+        behind = solver.gains(stage.inputs, far[1], midband=True)
+        loaded = band if behind is None else abs(complex(behind[0]))
+    return Passage(band, by_bandwidth, loaded)
 
 
 def far_end(bench: Bench, stage: Stage) -> tuple[str, str] | None:
@@ -67,28 +80,37 @@ def far_end(bench: Bench, stage: Stage) -> tuple[str, str] | None:
 
 @measure("stage")
 def passed_gain(bench: Bench, subject: Subject) -> Figure:
-    """Smallest magnitude of a follower-type stage's gain: in the pass band, at the signal's frequency, behind its series resistor."""
-    found = _passed(bench, stage_of(subject))
-    if isinstance(found, str):
-        return Unknown(found)
-    return Known(min(each for each in found if each is not None))
+    """Magnitude of a follower-type stage's gain in its pass band, less what its amplifier's bandwidth takes at the signal."""
+    found = _passage(bench, stage_of(subject))
+    return Unknown(found) if isinstance(found, str) else Known(min(found.band, found.by_bandwidth))
+
+
+@measure("stage")
+def loaded_gain(bench: Bench, subject: Subject) -> Figure:
+    """Magnitude of a follower-type stage's gain to the net behind the series resistor at its output."""
+    found = _passage(bench, stage_of(subject))
+    return Unknown(found) if isinstance(found, str) else Known(found.loaded)
+
+
+@measure("stage", kind="flag")
+def is_in_larger_loop(bench: Bench, subject: Subject) -> Figure:
+    """True when the stage's amplifiers share a feedback loop with amplifiers of other stages: its own gain says little."""
+    stage = stage_of(subject)
+    if not stage.amplifiers:
+        return Known(False)
+    names = {each.name for each in bench.solver(stage).region.amplifiers}
+    return Known(bool(names - set(stage.amplifiers)))
 
 
 @measure("stage", kind="word")
 def loss_cause(bench: Bench, subject: Subject) -> Figure:
     """What takes the signal in a follower-type stage, in words."""
     stage = stage_of(subject)
-    found = _passed(bench, stage)
+    found = _passage(bench, stage)
     if isinstance(found, str):
         return Unknown(found)
-    band, at_signal, loaded = found
-    least = min(each for each in found if each is not None)
-    if loaded is not None and loaded == least and loaded < 0.999 * band:
-        far = far_end(bench, stage)
-        assert far is not None
-        return Known(f"{far[0]} in series with the output and the load on {far[1]} divide")
-    if at_signal is not None and at_signal == least and at_signal < 0.99 * band:
-        return Known("the bandwidth ends below the signal's frequency")
+    if found.by_bandwidth < 0.99 * found.band:
+        return Known("the amplifier's bandwidth ends below the signal's frequency")
     names = attenuator_parts(bench, stage)
     if names:
         return Known(f"{', '.join(names)} divide ahead of the input")
@@ -97,18 +119,22 @@ def loss_cause(bench: Bench, subject: Subject) -> Figure:
 
 @measure("stage", kind="words")
 def loss_parts(bench: Bench, subject: Subject) -> Figure:
-    """Designators of the parts that take the signal in a follower-type stage."""
-    stage = stage_of(subject)
-    found = _passed(bench, stage)
-    if isinstance(found, str):
-        return Unknown(found)
-    band, at_signal, loaded = found
-    if loaded is not None and loaded < 0.999 * band:
-        far = far_end(bench, stage)
-        return Known((far[0],) if far is not None else ())
-    if at_signal is not None and at_signal < 0.99 * band:
-        return Known(())
-    return Known(attenuator_parts(bench, stage))
+    """Designators of the parts that divide ahead of a follower-type stage's input."""
+    return Known(attenuator_parts(bench, stage_of(subject)))
+
+
+@measure("stage", kind="word")
+def series_resistor(bench: Bench, subject: Subject) -> Figure:
+    """Designator of the resistor in series with the stage's output."""
+    far = far_end(bench, stage_of(subject))
+    return Known(far[0]) if far is not None else Unknown("no resistor stands in series with the output")
+
+
+@measure("stage", kind="word")
+def load_net(bench: Bench, subject: Subject) -> Figure:
+    """Net behind the resistor in series with the stage's output."""
+    far = far_end(bench, stage_of(subject))
+    return Known(far[1]) if far is not None else Unknown("no resistor stands in series with the output")
 
 
 def attenuator_parts(bench: Bench, stage: Stage) -> tuple[str, ...]:

@@ -68,7 +68,7 @@ class StageSolver:
         self.bench = bench
         self.region = region
         self.system: System = region_system(bench, region)
-        self._small: dict[tuple[float, bool], SmallSignal] = {}
+        self._small: dict[tuple[float, bool, bool], SmallSignal] = {}
         self._junctions: Entries | None = None
 
     @property
@@ -78,9 +78,12 @@ class StageSolver:
             self._junctions = junction_entries(self.bench, self.system)
         return self._junctions
 
-    def small(self, hertz: float = 0.0, *, midband: bool = False) -> SmallSignal:
-        """Return the region for small signals at one frequency; at DC with coupling capacitors short for ``midband``."""
-        key = (hertz, midband)
+    def small(self, hertz: float = 0.0, *, midband: bool = False, ideal: bool = False) -> SmallSignal:
+        """Return the region for small signals at one frequency.
+
+        ``midband`` is DC with the coupling capacitors short; ``ideal`` takes amplifiers without bandwidth.
+        """
+        key = (hertz, midband, ideal)
         if key not in self._small:
             self._small[key] = SmallSignal(
                 self.system,
@@ -88,15 +91,15 @@ class StageSolver:
                 self.bench.switching,
                 hertz,
                 shorted=self.bench.coupling_capacitors if midband else (),
-                gain_bandwidth_hz=self.bench.gain_bandwidth_hz,
+                gain_bandwidth_hz=None if ideal else self.bench.gain_bandwidth_hz,
             )
         return self._small[key]
 
     def gains(
-        self, inputs: Sequence[str], output: str, *, midband: bool = False, hertz: float = 0.0
+        self, inputs: Sequence[str], output: str, *, midband: bool = False, hertz: float = 0.0, ideal: bool = False
     ) -> numpy.ndarray | None:
         """Return the gains from each input, the others held, to the output: shape ``(k,)``; None when undefined."""
-        found = self.small(hertz, midband=midband).transfers(inputs, [output])
+        found = self.small(hertz, midband=midband, ideal=ideal).transfers(inputs, [output])
         return None if found is None else found[0]
 
     def row_of(self, name: str) -> AmplifierRow | None:
