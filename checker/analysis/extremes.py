@@ -14,6 +14,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from ..circuit.parts import Signal
+from ..topology.references import is_bypassed_divider
 from .believable import BELIEVABLE_V, RUNS_AWAY, tidy
 from .doubts import spread_doubts
 from .figures import Unknown
@@ -184,7 +185,8 @@ class Extremes:
                 amplifier = bench.circuit.amplifier(name)
                 if amplifier is not None:
                     origins[amplifier.output] = name
-            self._bent = spread_doubts(bench, origins) if origins else {}
+            steady = [net for net in bench.circuit.nets if is_bypassed_divider(bench.circuit, net)] if origins else []
+            self._bent = spread_doubts(bench, origins, held=steady)
         return self._bent
 
     @property
@@ -212,6 +214,9 @@ class Extremes:
                     )
                 continue
             at_dc, in_band = self._gain(name, index), self._gain(name, index, midband=True)
+            for hertz in signal.frequencies_hz:
+                at_signal = self._gain(name, index, hertz)
+                in_band = at_signal if abs(at_signal) > abs(in_band) else in_band
             if abs(in_band - at_dc) > SAME_SHARE * max(abs(in_band), abs(at_dc), 1e-6):
                 return Unknown(f"the signal on {name} comes over a capacitor to a circuit that is not linear")
         points = self._swept_points()

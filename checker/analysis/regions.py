@@ -54,7 +54,7 @@ def regions_of(bench: Bench) -> dict[str, Region]:
     circuit = bench.circuit
     ends = driven_from_outside(bench)
     reaches = {each.name: _reach(circuit, (each,), ends=ends) for each in circuit.amplifiers}
-    loops = _loops(circuit, reaches)
+    loops = _loops(circuit, ends)
     found: dict[str, Region] = {}
     for amplifier in circuit.amplifiers:
         if amplifier.name in found:
@@ -117,7 +117,34 @@ def _pins(amplifier: Amplifier) -> Iterator[str]:
             yield net
 
 
-def _loops(circuit: Circuit, reaches: Mapping[str, _Reach]) -> dict[str, tuple[Amplifier, ...]]:
+def _drivers(circuit: Circuit, amplifier: Amplifier, ends: frozenset[str]) -> list[str]:
+    """Return the amplifiers whose outputs reach the inputs of one over passive parts; its own output holds itself."""
+    seen: set[str] = set()
+    found: list[str] = []
+    waiting = [net for net in _pins(amplifier) if net != amplifier.output]
+    if amplifier.output in (amplifier.plus, amplifier.minus):
+        seen.add(amplifier.output)
+    while waiting:
+        net = waiting.pop()
+        if net in seen:
+            continue
+        seen.add(net)
+        drivers = circuit.amplifiers_at(net)
+        if drivers:
+            found.extend(each.name for each in drivers if each is not amplifier)
+            continue
+        if circuit.is_stiff(net) or net in ends:
+            continue
+        for designator, _ in circuit.pins_on(net):
+            part = circuit.parts[designator]
+            if part.kind not in _PASSIVE_ENDS:
+                waiting.extend(part.nets)
+                if part.kind in (PartKind.VCVS, PartKind.VCCS, PartKind.BEHAVIOURAL):
+                    waiting.extend(part.control)
+    return found
+
+
+def _loops(circuit: Circuit, ends: frozenset[str]) -> dict[str, tuple[Amplifier, ...]]:
     """Return the amplifiers that stand in one loop with each other, by name."""
     if len(circuit.amplifiers) < 2:
         return {}
@@ -125,12 +152,8 @@ def _loops(circuit: Circuit, reaches: Mapping[str, _Reach]) -> dict[str, tuple[A
 
     graph = networkx.DiGraph()
     for each in circuit.amplifiers:
-        inner, _, edges = reaches[each.name]
         graph.add_node(each.name)
-        for net in edges:
-            graph.add_edges_from((other.name, each.name) for other in circuit.amplifiers_at(net))
-        for net in inner:  # two outputs on one net
-            graph.add_edges_from((other.name, each.name) for other in circuit.amplifiers_at(net) if other is not each)
+        graph.add_edges_from((driver, each.name) for driver in _drivers(circuit, each, ends))
     known = {each.name: each for each in circuit.amplifiers}
     order = {name: index for index, name in enumerate(known)}
     found = {}

@@ -93,7 +93,13 @@ def is_switching(bench: Bench, subject: Subject) -> Figure:
 @measure("stage", kind="flag")
 def rests_at_rail(bench: Bench, subject: Subject) -> Figure:
     """True for stages whose amplifier waits at a rail by design: detectors, rectifiers, clampers, log stages, oscillators."""
-    return Known(stage_of(subject).topology in WAITING)
+    stage = stage_of(subject)
+    if stage.topology == "unrecognized" and stage.output is not None:
+        states = bench.solution.states
+        is_limited = any(states.get(name) in ("high", "low", "off") for name in stage.amplifiers)
+        if is_limited or stage.output in bench.extremes.bent:
+            return Unknown("the stage is not recognized: whether it may stand at a rail is not known")
+    return Known(stage.topology in WAITING)
 
 
 WAITING = frozenset(

@@ -54,7 +54,7 @@ def bias_resistor(reading: SubjectReading) -> Iterator[Proposal]:
         return
     capacitors = [circuit.parts[name].value for name in bias_path(bench, pin.net).capacitors]
     known = [each for each in capacitors if each]
-    frequencies = [each for signal in circuit.signals.values() for each in signal.frequencies_hz]
+    frequencies = [each for signal in circuit.signals.values() for each in signal.frequencies_hz if each > 0]
     wanted = 100e3
     if known and frequencies:
         wanted = 10 / (2 * math.pi * min(frequencies) * sum(known))
