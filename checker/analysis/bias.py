@@ -97,7 +97,7 @@ def _is_defined(bench: Bench, net: str) -> bool:
     if circuit.is_stiff(net) or circuit.amplifiers_at(net):
         return True
     signal = circuit.signals.get(net)
-    if signal is not None and not signal.is_current:
+    if signal is not None and not signal.is_current and signal.other is None:
         return True
     return any(
         circuit.parts[designator].kind is PartKind.REGULATOR and "OUT" in pin.upper()

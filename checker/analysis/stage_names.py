@@ -82,3 +82,9 @@ def is_attenuator(bench: Bench, subject: Subject) -> Figure:
 def clips_on_purpose(bench: Bench, subject: Subject) -> Figure:
     """True when the intent file says that the stage clips on purpose."""
     return _flag(bench, subject, "clips")
+
+
+@measure("stage", kind="flag")
+def loop_is_outside(bench: Bench, subject: Subject) -> Figure:
+    """True when the intent file says that the stage's loop closes outside the netlist: nothing here sets its output."""
+    return _flag(bench, subject, "loop_outside")
