@@ -25,6 +25,7 @@ if TYPE_CHECKING:
     from .small_signal import SmallSignal
     from .stage_solver import StageSolver
     from .system import System
+    from .transfer import Transfer
 
 SWITCHING_TOPOLOGIES = frozenset(("comparator", "window-comparator", "schmitt-trigger", "relaxation-oscillator"))
 
@@ -66,6 +67,7 @@ class Bench:
         self._linear: dict[tuple[float, bool], SmallSignal | None] = {}
         self._regions: dict[str, Region] | None = None
         self._solvers: dict[str, StageSolver] = {}
+        self.transfers: dict[tuple[str, bool], Transfer | str] = {}
         self._doubts: dict[str, str] | None = None
         self._stage_of: dict[str, Stage] = {
             name.casefold(): stage for stage in self.stages for name in (stage.name, *stage.amplifiers)

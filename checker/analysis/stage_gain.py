@@ -196,23 +196,42 @@ def noise_gain(bench: Bench, subject: Subject) -> Figure:
     return Known(1 / inverse)
 
 
-@measure("stage")
-def feedback_factor(bench: Bench, subject: Subject) -> Figure:
-    """Share of the output that returns to the amplifier's input: the inverse of the noise gain."""
-    found = bench.value("noise_gain", subject)
-    return Known(1 / found) if found else bench.figure("noise_gain", subject)
+def _return_ratio(bench: Bench, subject: Subject) -> tuple[float, float, tuple[str, ...]] | Unknown:
+    """Return the return ratio of the stage's amplifier at DC and its open-loop gain."""
+    import numpy as np
+
+    stage = stage_of(subject)
+    noise = bench.figure("noise_gain", subject)
+    if isinstance(noise, Unknown):
+        return noise
+    amplifier = bench.circuit.amplifier(stage.amplifiers[0])
+    ratio = bench.solver(stage).loop_gain(stage.amplifiers[0], np.array([0.0]))
+    if ratio is None or amplifier is None:
+        return Unknown("the loop gain could not be computed")
+    notes = () if amplifier.gain_origin != "assumed" else (f"open-loop gain of {amplifier.gain:.0e} assumed",)
+    return float(ratio[0].real), amplifier.gain, notes
 
 
 @measure("stage")
 def loop_gain(bench: Bench, subject: Subject) -> Figure:
-    """Open-loop gain times feedback factor at DC (V/V)."""
-    found = bench.value("noise_gain", subject)
-    if not found:
-        return bench.figure("noise_gain", subject)
-    amplifier = bench.circuit.amplifier(stage_of(subject).amplifiers[0])
-    assert amplifier is not None
-    notes = () if amplifier.gain_origin != "assumed" else (f"open-loop gain of {amplifier.gain:.0e} assumed",)
-    return Known(amplifier.gain / found, notes)
+    """Return ratio of the stage's amplifier at DC: open-loop gain times feedback factor, output resistance included (V/V)."""
+    found = _return_ratio(bench, subject)
+    return found if isinstance(found, Unknown) else Known(found[0], found[2])
+
+
+@measure("stage")
+def feedback_factor(bench: Bench, subject: Subject) -> Figure:
+    """Share of the amplifier's unloaded output that returns to its input: loop gain over open-loop gain."""
+    found = _return_ratio(bench, subject)
+    return found if isinstance(found, Unknown) else Known(found[0] / found[1], found[2])
+
+
+def current_input(bench: Bench, stage: Stage) -> str | None:
+    """Return the net into which a stage's input current flows: its first input, else the amplifier's inverting input."""
+    if stage.inputs:
+        return stage.inputs[0]
+    amplifier = bench.circuit.amplifier(stage.amplifiers[0]) if stage.amplifiers else None
+    return amplifier.minus if amplifier is not None else None
 
 
 @measure("stage", unit="ohm")
@@ -221,7 +240,8 @@ def transresistance_ohm(bench: Bench, subject: Subject) -> Figure:
     stage = stage_of(subject)
     if stage.topology not in CURRENT_INPUT:
         return Unknown("the input is a voltage: see dc_gain")
-    if stage.output is None or not stage.inputs:
+    net = current_input(bench, stage)
+    if stage.output is None or net is None:
         return Unknown("input or output net is not known")
     reason = gain_doubt(bench, stage)
     if reason is not None:
@@ -230,7 +250,7 @@ def transresistance_ohm(bench: Bench, subject: Subject) -> Figure:
 
     solver = bench.solver(stage)
     right = np.zeros(solver.system.size)
-    row = solver.system.index(stage.inputs[0])
+    row = solver.system.index(net)
     if row < 0:
         return Unknown("the input net is held")
     right[row] = 1.0

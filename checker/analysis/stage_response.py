@@ -8,9 +8,10 @@ from typing import TYPE_CHECKING
 from ..topology.stages import Stage
 from .figures import Figure, Known, Unknown
 from .measures import measure
-from .stage_gain import JUNCTION_TOPOLOGIES, TWO_SIDED, formula, gain_doubt, has_no_gain, stage_of
-from .stage_solver import MODAL_LIMIT, Modes
+from .stage_gain import JUNCTION_TOPOLOGIES, TWO_SIDED, current_input, formula, gain_doubt, has_no_gain, stage_of
+from .stage_solver import MODAL_LIMIT
 from .subjects import CURRENT_INPUT, Subject
+from .transfer import Transfer
 
 if TYPE_CHECKING:
     import numpy
@@ -23,57 +24,52 @@ SECOND_ORDER = frozenset(
         "state-variable-filter", "notch-filter",
     )
 )  # fmt: skip
-LOWEST_HZ, HIGHEST_HZ, POINTS = 1e-4, 1e10, 1400
+LOWEST_HZ, HIGHEST_HZ, POINTS = 1e-4, 1e10, 420
 LOOP_LOWEST_HZ, LOOP_POINTS = 0.1, 220
 
 
-def transfer_modes(bench: Bench, stage: Stage, *, ideal: bool) -> Modes | str:
+def stage_transfer(bench: Bench, stage: Stage, *, ideal: bool) -> Transfer | str:
     """Return the headline transfer of a stage over frequency, or why there is none."""
-    reason = (None if stage.topology in CURRENT_INPUT else has_no_gain(bench, stage)) or gain_doubt(bench, stage)
+    key = (stage.name, ideal)
+    if key not in bench.transfers:
+        bench.transfers[key] = _transfer(bench, stage, ideal)
+    return bench.transfers[key]
+
+
+def _transfer(bench: Bench, stage: Stage, ideal: bool) -> Transfer | str:
+    is_current = stage.topology in CURRENT_INPUT
+    reason = (None if is_current else has_no_gain(bench, stage)) or gain_doubt(bench, stage)
     if reason is not None:
         return reason
-    if stage.output is None or not stage.inputs:
-        return "input or output net is not known"
-    if stage.topology in CURRENT_INPUT:
-        return _current_modes(bench, stage, ideal=ideal)
+    if stage.output is None:
+        return "the stage has no output net"
     solver = bench.solver(stage)
+    if is_current:
+        net = current_input(bench, stage)
+        found = solver.current_transfer(net, stage.output, ideal=ideal) if net is not None else None
+        return "the poles of the stage could not be found" if found is None else found
     floating = [net for net in solver.system.floating if net not in stage.inputs]
     if floating:
         return f"net {floating[0]} has no DC path"
-    found = solver.modes(stage.inputs, stage.output, ideal=ideal)
-    if found is None:
-        return "the poles of the stage could not be found"
-    if stage.topology in TWO_SIDED and len(found) == 2:
-        return Modes(found[0].periods, (found[0].residues - found[1].residues) / 2)
-    return found[0]
-
-
-def _current_modes(bench: Bench, stage: Stage, *, ideal: bool) -> Modes | str:
-    from .small_signal import linear_matrices
-    from .stage_solver import dense_matrix, modes_of
-
-    solver = bench.solver(stage)
-    system = solver.system
-    row, out = system.index(stage.inputs[0]), system.index(stage.output)
-    if row < 0 or out < 0 or system.size > MODAL_LIMIT:
-        return "the poles of the stage could not be found"
-    products = None if ideal else bench.gain_bandwidth_hz
-    entries, storages = linear_matrices(system, solver.junctions, bench.switching, (), products)
-    found = modes_of(dense_matrix(system.size, entries), dense_matrix(system.size, storages), [row], out)
-    return "the poles of the stage could not be found" if found is None else found[0]
+    weights = [0.0] * len(stage.inputs)
+    weights[0] = 1.0
+    if stage.topology in TWO_SIDED and len(stage.inputs) == 2:
+        weights = [0.5, -0.5]
+    found = solver.transfer(stage.inputs, stage.output, weights, ideal=ideal)
+    return "the poles of the stage could not be found" if found is None else found
 
 
 def peak_gain(bench: Bench, stage: Stage) -> float | None:
     """Return the signed gain where its magnitude over frequency is largest (V/V)."""
     import numpy as np
 
-    found = transfer_modes(bench, stage, ideal=True)
+    found = stage_transfer(bench, stage, ideal=True)
     if isinstance(found, str):
         return None
     hertz = np.geomspace(LOWEST_HZ, HIGHEST_HZ, POINTS)
     size = np.abs(found.at(hertz))
     best = int(size.argmax())
-    near = np.geomspace(hertz[max(best - 1, 0)], hertz[min(best + 1, POINTS - 1)], 400)
+    near = np.geomspace(hertz[max(best - 1, 0)], hertz[min(best + 1, POINTS - 1)], 300)
     values = found.at(near)
     top = values[int(np.abs(values).argmax())]
     return float(math.copysign(abs(top), top.real))
@@ -86,7 +82,7 @@ def corner_hz(bench: Bench, subject: Subject) -> Figure:
     A pair of complex poles counts once; second-order filters report the natural frequency of their pair.
     """
     stage = stage_of(subject)
-    found = transfer_modes(bench, stage, ideal=True)
+    found = stage_transfer(bench, stage, ideal=True)
     if isinstance(found, str):
         closed = formula(bench, stage, "corner_hz")
         return Known((closed,)) if closed is not None else Unknown(found)
@@ -100,7 +96,7 @@ def corner_hz(bench: Bench, subject: Subject) -> Figure:
 def quality(bench: Bench, subject: Subject) -> Figure:
     """Quality factor of the stage's pair of poles: ``w0 / (2*|Re p|)``, or ``sqrt(p1*p2)/(p1+p2)`` for real ones."""
     stage = stage_of(subject)
-    found = transfer_modes(bench, stage, ideal=True)
+    found = stage_transfer(bench, stage, ideal=True)
     if isinstance(found, str):
         return Unknown(found)
     pairs = [each for each in _pairs(stage, found.poles()) if each[1] is not None]
@@ -142,7 +138,7 @@ def bandwidth_hz(bench: Bench, subject: Subject) -> Figure:
     import numpy as np
 
     stage = stage_of(subject)
-    found = transfer_modes(bench, stage, ideal=False)
+    found = stage_transfer(bench, stage, ideal=False)
     if isinstance(found, str):
         return Unknown(found)
     if not found.poles():
@@ -305,7 +301,7 @@ def peaking_db(bench: Bench, subject: Subject) -> Figure:
     """How far the magnitude over frequency rises above its pass-band level, amplifiers with their bandwidth (dB)."""
     import numpy as np
 
-    found = transfer_modes(bench, stage_of(subject), ideal=False)
+    found = stage_transfer(bench, stage_of(subject), ideal=False)
     if isinstance(found, str):
         return Unknown(found)
     if not found.poles():

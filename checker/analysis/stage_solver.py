@@ -4,12 +4,12 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 from ..circuit.parts import PartKind
 from .small_signal import SmallSignal, linear_matrices
 from .system import AmplifierRow, Entries, System
+from .transfer import Transfer
 
 if TYPE_CHECKING:
     import numpy
@@ -18,37 +18,6 @@ if TYPE_CHECKING:
     from .regions import Region
 
 MODAL_LIMIT = 250  # unknowns; poles of larger regions would take too long
-
-
-@dataclass(frozen=True, slots=True)
-class Modes:
-    """A transfer as a sum of first-order terms: ``H(s) = sum(residues / (1 + s*periods))``, with complex figures.
-
-    ``periods`` are in seconds (the negative inverse of the poles); terms without a period make ``H`` at DC.
-    """
-
-    periods: numpy.ndarray
-    residues: numpy.ndarray
-
-    def at(self, hertz: numpy.ndarray) -> numpy.ndarray:
-        """Return the complex gain at frequencies (Hz), in their shape."""
-        import numpy as np
-
-        s = 2j * math.pi * np.asarray(hertz, dtype=float)
-        found: numpy.ndarray = (self.residues / (1 + s[..., None] * self.periods)).sum(axis=-1)
-        return found
-
-    def poles(self, share: float = 1e-6) -> list[complex]:
-        """Return the poles (rad/s) that the transfer shows: terms below ``share`` of the largest are left out."""
-        import numpy as np
-
-        strength = np.abs(self.residues)
-        top = strength.max(initial=0.0)
-        found = []
-        for period, size in zip(self.periods, strength, strict=True):
-            if abs(period) > 1e-15 and size > share * top:
-                found.append(complex(-1 / period))
-        return sorted(found, key=lambda pole: (abs(pole), pole.imag))
 
 
 class StageSolver:
@@ -140,10 +109,12 @@ class StageSolver:
             return None
         return complex(self.small(hertz, midband=midband).factors.solve(right)[row.output])
 
-    def modes(self, inputs: Sequence[str], output: str, *, ideal: bool = False) -> list[Modes] | None:
-        """Return the transfer from each input to the output as modes; ``ideal`` takes amplifiers without bandwidth.
+    def transfer(
+        self, inputs: Sequence[str], output: str, weights: Sequence[float], *, ideal: bool = False
+    ) -> Transfer | None:
+        """Return a weighted sum of the transfers from the inputs to the output over frequency.
 
-        None when the region is too large or an input cannot be held.
+        ``ideal`` takes amplifiers without bandwidth. None when the region is too large or an input cannot be held.
         """
         size = self.system.size
         out = self.system.index(output)
@@ -157,7 +128,17 @@ class StageSolver:
             matrix[row, :] = 0.0
             stored[row, :] = 0.0
             matrix[row, self.system.index(net)] = 1.0
-        return modes_of(matrix, stored, rows, out)
+        return Transfer(matrix, stored, rows, weights, out)
+
+    def current_transfer(self, net: str, output: str, *, ideal: bool = False) -> Transfer | None:
+        """Return the transfer from a current into a net to the output voltage; see :meth:`transfer`."""
+        row, out = self.system.index(net), self.system.index(output)
+        if self.system.size > MODAL_LIMIT or row < 0 or out < 0:
+            return None
+        products = None if ideal else self.bench.gain_bandwidth_hz
+        entries, storages = linear_matrices(self.system, self.junctions, self.bench.switching, (), products)
+        size = self.system.size
+        return Transfer(dense_matrix(size, entries), dense_matrix(size, storages), [row], [1.0], out)
 
     def loop_gain(self, name: str, hertz: numpy.ndarray) -> numpy.ndarray | None:
         """Return the return ratio of one amplifier at frequencies (Hz), all other loops closed; None without a model.
@@ -236,25 +217,6 @@ def dense_matrix(size: int, entries: Entries) -> numpy.ndarray:
     if entries.values:
         np.add.at(matrix, (entries.rows, entries.columns), entries.values)
     return matrix
-
-
-def modes_of(matrix: numpy.ndarray, stored: numpy.ndarray, rows: Sequence[int], out: int) -> list[Modes] | None:
-    """Return the modes from a unit right side at each row to one unknown of ``(G + sC) x = b``."""
-    import numpy as np
-
-    try:
-        inverse = np.linalg.inv(matrix)
-        periods, vectors = np.linalg.eig(inverse @ stored)
-        back = np.linalg.solve(vectors, inverse[:, list(rows)].astype(complex))
-    except np.linalg.LinAlgError:
-        return None
-    with np.errstate(all="ignore"):
-        residues = vectors[out, :, None] * back
-    if not np.all(np.isfinite(residues)):
-        return None
-    largest = np.abs(periods).max(initial=0.0)
-    periods = np.where(np.abs(periods) < 1e-14 * largest, 0.0, periods)
-    return [Modes(periods, residues[:, column]) for column in range(len(rows))]
 
 
 def junction_entries(bench: Bench, system: System) -> Entries:
