@@ -24,6 +24,7 @@ MISTAKES = [
     ("abs > 3", 1, 3, "unknown name `abs`", "abs(…)"),
     ('topology == "comparater"', 13, 12, "`topology` is never `comparater`", "comparator"),
     ('topology in ["comparator", "folower"]', 28, 9, "`topology` is never `folower`", None),
+    ("zzz > 1", 1, 3, "unknown name `zzz`", "known here: topology, name, gain"),
     ("outer.gain > 1", 1, 10, "unknown name `outer.gain`", None),
     # units
     ("supply_v > 5", 12, 1, "`supply_v` is a voltage (V), compared with a plain number", "5 V"),
@@ -61,6 +62,9 @@ MISTAKES = [
     ('nets["VCC"] > 1', 1, 4, "not a table", None),
     ("gains[1] > 1", 7, 1, "looked up in a table", 'gains["…"]'),
     ('topology in "comparator"', 1, 24, "looked for in a word", '["comparator"]'),
+    ("3 in nets", 1, 9, "`3` is a plain number, looked for in a list of words", '"…" in nets'),
+    ("supply_v in headroom", 1, 20, "looked for in a voltage", "supply_v in low .. high"),
+    ("supply_v in corner_hz", 13, 9, "looked for in a list of figures, each a frequency (Hz)", None),
     ("topology in nets in nets", 18, 2, "`in` is out of place", None),
     ("length(gain) > 1", 8, 4, "has no length", None),
     ("min(gain) > 1", 5, 4, "nothing to take the min of", "min(gain, …)"),
@@ -68,6 +72,7 @@ MISTAKES = [
     ("3 V is known", 1, 3, "always known", None),
     # functions and relations
     ("sine(gain) > 1", 1, 4, "unknown function `sine`", None),
+    ("zzz(gain) > 1", 1, 3, "unknown function `zzz`", "functions: abs, min"),
     ("gain(3) > 1", 1, 4, "`gain` is a figure, not a function", "without brackets"),
     ("abs(gain, a) > 1", 1, 3, "`abs` with 2 arguments", None),
     ("sqrt() > 1", 1, 4, "`sqrt` with 0 arguments", None),
@@ -106,6 +111,7 @@ MISTAKES = [
     ("gain > 1)", 9, 1, "`)` closes nothing", None),
     ('topology == "comparator', 13, 11, "not closed", 'close it with "'),
     ("gain a > 1", 6, 1, "`a` is out of place", None),
+    ("gain ,a > 1", 6, 1, "`,` is out of place", None),
     ("gain > 1.2.3", 11, 1, "`.` is out of place", None),
     ("", 1, 1, "the condition is empty", None),
     ("   ", 1, 1, "the condition is empty", None),
@@ -133,6 +139,16 @@ def test_problem_is_worded_for_a_reader(text):
         assert "None" not in said
         assert not any(word in said for word in ("please", "illegal", "oops", "invalid"))
         assert problem.kind.replace("-", "").islower()
+
+
+@pytest.mark.parametrize(("text", "expected"), [("gain >", "figure by name"), ("gain > ,", "figure by name")])
+def test_a_missing_term_is_expected_in_trade_words(text, expected):
+    assert expected in problems_of(text)[0].expected
+
+
+@pytest.mark.parametrize("text", ["gain gain", "(gain > 1", "gain @ 1", "gain = 1"])
+def test_a_missing_operator_is_expected_in_trade_words(text):
+    assert "comparison" in problems_of(text)[0].expected
 
 
 def test_every_mistake_of_a_condition_is_told_at_once():

@@ -61,6 +61,7 @@ def test_quantity_is_read_in_si_units(text, expected, unit):
         ("db(gain)", "dB"),
         ("temperature_c - 25 degC", "K"),
         ("temperature_c + rise_k", "degC"),
+        ("(temperature_c - 25 degC) / (supply_v * output_a)", "K/W"),
         ("mismatch", "%"),
         ("mismatch * 2 V", "V"),
         ("max(supply_v, 0)", "V"),
@@ -303,6 +304,23 @@ def test_figure_that_is_no_number_is_unknown(given):
     assert verdict("a > 1", a=Known(given)).value is None
 
 
+@pytest.mark.parametrize("text", ["min(gains) > 1", "max(gains) > 1", "sum(gains) > 1", 'gains["IN1"] > 1'])
+@pytest.mark.parametrize("given", [None, math.nan, "text", True])
+def test_table_with_an_entry_that_is_no_number_is_unknown(text, given):
+    assert verdict(text, gains={"IN1": given, "IN2": 2.0}).value is None
+
+
+@pytest.mark.parametrize("given", [(None,), (math.nan,), ("text",), "text", {"A": 1.0}, 3.0])
+def test_list_that_holds_no_numbers_is_unknown(given):
+    assert verdict("max(corner_hz) > 1 Hz", corner_hz=given).value is None
+    assert verdict("length(corner_hz) > 9", corner_hz=given).value is None
+
+
+@pytest.mark.parametrize("given", [(1.0,), "text", 3.0, {"A": 1.0}])
+def test_list_that_holds_no_words_is_unknown(given):
+    assert verdict('"VCC" in nets', nets=given).value is None
+
+
 def test_value_with_several_unknown_figures_tells_them_as_one():
     assert value("a + b") == Unknown(
         "a is not computed; b is not computed", "the part data behind a, the part data behind b"
@@ -318,6 +336,20 @@ def test_verdict_carries_the_assumptions_it_rests_on():
     assert verdict("a > c and b < c", reading).assumptions == ("5 % tolerance",)
     assert verdict("c > 5 or b > c", reading).assumptions == ("no load", "5 % tolerance")
     assert verdict("if(a > 0, c, c) > 1", reading).assumptions == ("5 % tolerance",)
+
+
+def test_choice_rests_on_the_assumptions_of_its_condition_too():
+    reading = Figures(p=Known(True, ("one supply",)), a=Known(2.0, ("5 % tolerance",)))
+    assert verdict("if(p, a > 1, b > 1)", reading).assumptions == ("one supply", "5 % tolerance")
+    assert value("if(p, a, b)", **reading.given).assumptions == ("one supply", "5 % tolerance")
+
+
+def test_choice_of_an_unknown_figure_is_unknown():
+    reading = Figures(p=Known(False, ("one supply",)), a=2.0)
+    assert [each.reason for each in verdict("if(p, a > 1, b > 1)", reading).unknowns] == ["b is not computed"]
+    assert [each.reason for each in verdict("if(p, a, b) > 1", reading).unknowns] == ["b is not computed"]
+    assert [each.reason for each in verdict("if(q, a, b) > 1", reading).unknowns] == ["q is not computed"]
+    assert [each.reason for each in verdict("if(q, a > 1, b > 1)", reading).unknowns] == ["q is not computed"]
 
 
 # Members
