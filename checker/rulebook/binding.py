@@ -7,13 +7,13 @@ from collections.abc import Callable, Sequence
 from typing import Any
 
 from ..analysis.figures import Known
-from ..errors import Location, Problem
+from ..errors import Problem
 from ..quantities import nearest_names
 from . import arithmetic, comparing
 from . import evaluation as at_work
 from .evaluation import Run, Test
 from .functions import FUNCTIONS, bind_call
-from .syntax import Node, place_in
+from .syntax import Node
 from .terms import (
     FLAG,
     NUMBER,
@@ -32,16 +32,16 @@ from .terms import (
 )
 
 MAX_EXPONENT = 9
+MAX_PROBLEMS = 20
 
 
 class Binder:
     """Binds the nodes of one text; problems are gathered, a term that has one is None and breeds no others."""
 
-    def __init__(self, text: str, scope: Scope, where: Location) -> None:
+    def __init__(self, text: str, scope: Scope) -> None:
         self.text = text
-        self.where = where
         self.scopes: list[tuple[Scope, str]] = [(scope, "")]
-        self.problems: list[Problem] = []
+        self.problems: list[tuple[Problem, int, int]] = []
         self.names: dict[str, None] = {}
         self.levels: set[int] = set()
         self.expects_word = False
@@ -63,9 +63,9 @@ class Binder:
         nearest: tuple[str, ...] = (),
     ) -> None:
         """Add a problem at a node; once there are many, the rest would only be noise."""
-        if len(self.problems) < 20:
-            place = place_in(self.text, self.where, node.start, node.end)
-            self.problems.append(Problem(kind, what, place, expected=expected, cure=cure, nearest=nearest))
+        if len(self.problems) < MAX_PROBLEMS:
+            problem = Problem(kind, what, expected=expected, cure=cure, nearest=nearest)
+            self.problems.append((problem, node.start, node.end))
 
     # Entry points
 

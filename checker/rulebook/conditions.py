@@ -6,7 +6,8 @@ loop, no call of anything but the functions of the language. :func:`describe_lan
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from pathlib import Path
 
 from ..analysis.figures import Figure, Known, Unknown
 from ..errors import ConditionError, Location, Problem
@@ -91,15 +92,29 @@ def _bound(text: str, scope: Scope, where: Location, *, as_test: bool) -> tuple[
     try:
         node = parse_syntax(text)
     except SyntaxTrouble as trouble:
-        place = place_in(text, where, trouble.start, trouble.end)
+        place = place_in(text, _with_line(where), trouble.start, trouble.end)
         raise ConditionError(
             Problem(trouble.kind, trouble.what, place, expected=trouble.expected, cure=trouble.cure)
         ) from None
-    binder = Binder(text, scope, where)
+    binder = Binder(text, scope)
     term = binder.bind_test(node) if as_test else binder.bind(node)
-    if binder.problems or term is None:
-        raise ConditionError(binder.problems)
+    if term is None or binder.problems:
+        whole = _with_line(where)
+        raise ConditionError(
+            replace(each, location=place_in(text, whole, start, end)) for each, start, end in binder.problems
+        )
     return term, tuple(binder.names)
+
+
+def _with_line(where: Location) -> Location:
+    """Return the place with the line of the file there; read only for the sake of a message, so never a trouble."""
+    if where.excerpt is not None:
+        return where
+    try:
+        rows = Path(where.file).read_text(encoding="utf-8-sig").splitlines()
+        return replace(where, excerpt=rows[where.line - 1])
+    except (OSError, ValueError, IndexError):
+        return where
 
 
 def _one_unknown(found: Missing) -> Unknown:

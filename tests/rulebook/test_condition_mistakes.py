@@ -172,6 +172,15 @@ def test_place_in_a_placeholder_is_that_of_the_message():
     assert place.column == row.index("suply_v") + 1
 
 
+def test_line_is_read_from_the_rule_file_when_it_is_not_given(tmp_path):
+    file = tmp_path / "some-rule.toml"
+    file.write_text("name = 'some-rule'\nrequire = 'suply_v > 5 V'\nwhen = 'gain >'\n", encoding="utf-8")
+    place = problems_of("suply_v > 5 V", Location(str(file), 2))[0].location
+    assert (place.line, place.column, place.excerpt) == (2, 12, "require = 'suply_v > 5 V'")
+    place = problems_of("gain >", Location(str(file), 3))[0].location
+    assert (place.line, place.column) == (3, 15)
+
+
 def test_place_falls_back_to_the_condition_where_the_line_holds_it_in_another_spelling():
     row = 'require = "suply_v > 5 V and topology == \\"comparator\\""'
     text = 'suply_v > 5 V and topology == "comparator"'
