@@ -313,11 +313,38 @@ def report_stage(stage: Stage, bench: Bench, assumptions: list[str]) -> StageRep
         output=stage.output,
         roles=stage.roles,
         measures=measures,
+        values={role: tuple(_value_of(bench, name) for name in names) for role, names in stage.roles.items()},
         properties=stage.properties,
+        notes=_cross_checks(stage, bench, measures),
         reason=stage.reason,
         line=stage.location.line,
         file=stage.location.file,
     )
+
+
+def _value_of(bench: Bench, designator: str) -> float | None:
+    part = bench.circuit.part(designator)
+    return part.value if part is not None else None
+
+
+CROSS_CHECK = 0.01  # share by which the closed form of a topology may differ from the solve without a word
+CROSS_CHECKED = ("dc_gain", "midband_gain", "corner_hz", "ratio_mismatch", "transresistance_ohm")
+
+
+def _cross_checks(stage: Stage, bench: Bench, measures: Mapping[str, Any]) -> tuple[str, ...]:
+    """Return a note for every figure whose solve and closed form differ: then something beside the textbook is at work."""
+    from .analysis.stage_gain import formula
+
+    notes = []
+    for name in (each for each in CROSS_CHECKED if each in stage.formulas):
+        closed, solved = formula(bench, stage, name), measures.get(name)
+        if isinstance(solved, tuple | list):
+            solved = min(solved, key=lambda each: abs(each - closed)) if solved and closed is not None else None
+        if closed is None or not isinstance(solved, float) or closed == solved:
+            continue
+        if abs(solved - closed) > CROSS_CHECK * max(abs(closed), abs(solved)):
+            notes.append(f"{name} is {solved:.4g} in this circuit, {closed:.4g} by the formula of the topology")
+    return tuple(notes)
 
 
 def _rule_texts(knowledge: Iterable[Knowledge]) -> tuple[RuleText, ...]:
@@ -325,5 +352,9 @@ def _rule_texts(knowledge: Iterable[Knowledge]) -> tuple[RuleText, ...]:
     for known in knowledge:
         for rule in known.pack.rules:
             text = RuleText(rule.name, rule.level, rule.title, rule.because, tuple(rule.sources))
-            texts.setdefault(rule.name, replace(text, concern=getattr(rule, "concern", "")))
+            texts.setdefault(rule.name, replace(text, concern=rule.concern))
+    if texts:
+        from .rulebook.waivers import EXPIRED, UNUSED
+
+        texts.update({each.name: each for each in (EXPIRED, UNUSED)})
     return tuple(texts[name] for name in sorted(texts))

@@ -144,16 +144,35 @@ def _drivers(circuit: Circuit, amplifier: Amplifier, ends: frozenset[str]) -> li
     return found
 
 
+def _without_ends(drivers: Mapping[str, set[str]]) -> dict[str, None]:
+    """Return the names that are left when all that nothing drives has been taken away, again and again."""
+    open_drivers = {name: len(each) for name, each in drivers.items()}
+    driven: dict[str, list[str]] = {}
+    for name, each in drivers.items():
+        for driver in each:
+            driven.setdefault(driver, []).append(name)
+    waiting = [name for name, count in open_drivers.items() if count == 0]
+    while waiting:
+        for name in driven.get(waiting.pop(), ()):
+            open_drivers[name] -= 1
+            if open_drivers[name] == 0:
+                waiting.append(name)
+    return {name: None for name, count in open_drivers.items() if count > 0}
+
+
 def _loops(circuit: Circuit, ends: frozenset[str]) -> dict[str, tuple[Amplifier, ...]]:
     """Return the amplifiers that stand in one loop with each other, by name."""
     if len(circuit.amplifiers) < 2:
         return {}
+    drivers = {each.name: set(_drivers(circuit, each, ends)) for each in circuit.amplifiers}
+    looped = _without_ends(drivers)
+    if not looped:
+        return {}
     import networkx
 
     graph = networkx.DiGraph()
-    for each in circuit.amplifiers:
-        graph.add_node(each.name)
-        graph.add_edges_from((driver, each.name) for driver in _drivers(circuit, each, ends))
+    graph.add_nodes_from(looped)
+    graph.add_edges_from((driver, name) for name in looped for driver in drivers[name] if driver in looped)
     known = {each.name: each for each in circuit.amplifiers}
     order = {name: index for index, name in enumerate(known)}
     found = {}

@@ -92,9 +92,8 @@ class Transfer:
             taken.add(match)
             right_vector, left_vector = vectors[:, index], left[:, match]
             overlap = left_vector @ right_vector
-            strength = abs(right_vector[self.out] * (left_vector @ start))
-            if abs(overlap) > 1e-9:
-                strength /= abs(overlap)
+            # poles that coincide have vectors without overlap: then both count as shown
+            strength = abs(right_vector[self.out] * (left_vector @ start)) / max(abs(overlap), 1e-30)
             found.append((complex(-1 / period), float(strength)))
         top = max([*(each[1] for each in found), abs(float(start[self.out]))], default=0.0)
         shown = [pole for pole, strength in found if strength > share * top]
