@@ -28,7 +28,8 @@ if TYPE_CHECKING:
 
 NEGLIGIBLE = 1e-9  # gain below which a signal does not reach a net
 SAME_SHARE = 0.01  # gains at DC and in the pass band that differ by less are the same
-INTEGRATING = 3000.0  # gain at DC above which a stage integrates: its output is known only with a frequency
+INTEGRATING = 3000.0  # gain at DC above which a stage integrates,
+IMPOSSIBLE_V = 100.0  # if it would also take the output beyond this: then its output is known only with a frequency
 
 
 @dataclass(frozen=True, slots=True)
@@ -110,7 +111,7 @@ class Extremes:
             size = abs(in_band) * swing
             shift = at_dc.real * (mean - rest) if abs(mean - rest) > 1e-12 * (1 + abs(mean)) else 0.0
             return Range(shift - size, shift + size, 0.0)
-        if abs(at_dc) > INTEGRATING and abs(at_dc) > 10 * abs(in_band):
+        if abs(at_dc) > INTEGRATING and abs(at_dc) * swing > IMPOSSIBLE_V:
             return Unknown(
                 f"the stage integrates and the frequency of the signal on {name} is not known",
                 f"frequency of [signals.{name}]",
