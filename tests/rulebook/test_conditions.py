@@ -141,6 +141,7 @@ def test_infinite_figures_compare_as_they_should():
         ("output_v in 2 V .. 3 V", Comparison(1.0, 2.0, "V", ">=")),
         ("output_v in 0 .. 0.5 V", Comparison(1.0, 0.5, "V", "<=")),
         ("output_v not in 0.9 V .. 5 V", Comparison(1.0, 0.9, "V", "<")),
+        ("output_v not in 0.95 V .. 1.3 V", Comparison(1.0, 0.95, "V", "<")),
         ("output_v not in 0 V .. 1.1 V", Comparison(1.0, 1.1, "V", ">")),
         ("supply_v > 0 and output_v > 3 V and output_v > 9 V", Comparison(1.0, 3.0, "V", ">")),
         ("a / b < 1 %", Comparison(0.5, 0.01, "%", "<")),
@@ -268,6 +269,8 @@ def test_range_is_false_where_one_known_bound_decides():
         ("a is not known", False, True),
         ("a is not unknown", True, False),
         ("a / b is known", True, False),
+        ("(a > 1) is known", True, False),
+        ("any(input_pins, gain > a) is known", True, True),
         ("a is known and a > 1", True, False),
         ("a is unknown or a > 1", True, True),
     ],
@@ -413,6 +416,12 @@ def test_where_no_member_passes_the_nearest_to_the_limit_is_named():
     assert (found.value, found.comparison) == (False, Comparison(9.0, 10.0, "", ">="))
 
 
+def test_an_infinite_figure_is_never_the_nearest_to_its_limit():
+    pins = tuple(Figures(resistance_ohm=each) for each in (math.inf, 2e6))
+    found = verdict("any(input_pins, resistance_ohm < 1 Mohm)", members={"input_pins": pins})
+    assert found.comparison == Comparison(2e6, 1e6, "ohm", "<")
+
+
 def test_list_of_members_keeps_their_order():
     assert value("list(input_pins, name)", members={"input_pins": (OPEN, HELD)}).value == ("IN+", "IN-")
 
@@ -437,6 +446,12 @@ def test_value_tells_unit_and_kind():
     assert compile_value("nets", STAGE, WHERE).kind == "words"
     assert compile_value("gain > 3", STAGE, WHERE).kind == "flag"
     assert compile_value("gain > 3", STAGE, WHERE).evaluate(Figures(gain=4.0)) == Known(True)
+
+
+def test_unit_of_a_name_is_shown_without_its_prefix():
+    assert compile_value("x", Names({"x": ("mV", "number")}), WHERE).unit == "V"
+    assert compile_value("x", Names({"x": ("nV/rtHz", "number")}), WHERE).unit == "V/rtHz"
+    assert compile_value("x", Names({"x": ("ppm", "number")}), WHERE).unit == ""
 
 
 def test_nothing_is_asked_after_the_first_false():
