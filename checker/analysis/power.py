@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING
 
 from ..circuit.graph import LINK_OHM
-from ..circuit.parts import PartKind
+from ..circuit.parts import Part, PartKind
 from .figures import Figure, Known
 from .listing import SupplyNet
 from .measures import measure
@@ -55,16 +55,32 @@ def bypass_capacitors(bench: Bench, net: str) -> dict[str, tuple[str, float | No
             if len(part.nets) != 2 or not part.is_fitted:
                 continue
             other = part.nets[1] if part.nets[0] == place else part.nets[0]
-            if part.kind is PartKind.CAPACITOR and other not in own and circuit.is_stiff(other):
-                found[part.designator] = (other, part.value)
-            is_small = part.kind is PartKind.RESISTOR and part.value is not None and part.value <= DAMPING_OHM
-            if is_small and not circuit.is_stiff(other) and circuit.degree(other) == 2:
+            if part.kind is PartKind.CAPACITOR:
+                end = other if circuit.is_stiff(other) else _behind(bench, other, part.designator, PartKind.RESISTOR)
+                if end is not None and end not in own:
+                    found[part.designator] = (end, part.value)
+            elif _is_small(part) and not circuit.is_stiff(other):
                 for inner in circuit.parts_on(other):
-                    if inner.kind is PartKind.CAPACITOR and len(inner.nets) == 2:
-                        end = inner.nets[1] if inner.nets[0] == other else inner.nets[0]
-                        if circuit.is_stiff(end) and end not in own:
-                            found[inner.designator] = (end, inner.value)
+                    end = _behind(bench, other, part.designator, PartKind.CAPACITOR)
+                    if inner.kind is PartKind.CAPACITOR and end is not None and end not in own:
+                        found[inner.designator] = (end, inner.value)
     return found
+
+
+def _is_small(part: Part) -> bool:
+    return part.kind is PartKind.RESISTOR and part.value is not None and part.value <= DAMPING_OHM
+
+
+def _behind(bench: Bench, net: str, before: str, kind: PartKind) -> str | None:
+    """Return the stiff net behind the one other part on a net: a capacitor, or a resistor that damps one."""
+    circuit = bench.circuit
+    rest = [part for part in circuit.parts_on(net) if part.designator != before]
+    if len(rest) != 1 or len(rest[0].nets) != 2 or rest[0].kind is not kind:
+        return None
+    if kind is PartKind.RESISTOR and not _is_small(rest[0]):
+        return None
+    end = rest[0].nets[1] if rest[0].nets[0] == net else rest[0].nets[0]
+    return end if circuit.is_stiff(end) else None
 
 
 @measure("supply net", unit="F")

@@ -9,15 +9,13 @@ from scipy.special import lambertw
 VT = 1.380649e-23 * 300.15 / 1.602176634e-19  # kT/q at 27 degC, SI constants
 
 
-@pytest.mark.parametrize("volts", [0.1, 0.5, 1.0, 5.0, 100.0])
+@pytest.mark.parametrize("volts", [0.1, 0.5, 1.0, 5.0, 10.0])
 @pytest.mark.parametrize(("saturation", "emission"), [(1e-14, 1.0), (2.5e-9, 1.75)])
 def test_diode_behind_a_resistor_carries_what_the_shockley_law_gives(volts, saturation, emission):
     solution = bench_of(f"V1 a 0 {volts}\nR1 a k 1k\nD1 k 0 DX\n.model DX D(IS={saturation} N={emission})\n").solution
     # closed form with the Lambert function: T. Banwell, A. Jayakumar, Electronics Letters 36, 2000 (from memory)
     scale, ohm = emission * VT, 1e3
-    argument = saturation * ohm / scale * math.exp(min((volts + saturation * ohm) / scale, 600))
-    if (volts + saturation * ohm) / scale > 600:
-        pytest.skip("beyond the range of the closed form in floating point")
+    argument = saturation * ohm / scale * math.exp((volts + saturation * ohm) / scale)
     current = scale / ohm * lambertw(argument).real - saturation
     assert solution.voltage("k") == pytest.approx(volts - ohm * current, rel=1e-6)
 
