@@ -42,6 +42,13 @@ class Range:
     assumptions: tuple[str, ...] = ()
 
 
+def _range(low: float, high: float, rest: float, assumptions: tuple[str, ...] = ()) -> Range:
+    """Return a range without the dust of the solve: what is a millionth of its span is nothing."""
+    dust = 1e-6 * max(abs(low), abs(high))
+    low, high, rest = (0.0 if abs(each) < dust else tidy(each) for each in (low, high, rest))
+    return Range(min(low, high), max(low, high), rest, assumptions)
+
+
 class Extremes:
     """Answers for one bench; responses to all signals are solved once per frequency."""
 
@@ -89,7 +96,7 @@ class Extremes:
             assumptions.extend(part.assumptions)
         if max(abs(low), abs(high)) > BELIEVABLE_V:
             return Unknown(RUNS_AWAY)
-        return Range(tidy(min(low, high)), tidy(max(low, high)), tidy(rest), tuple(assumptions))
+        return _range(low, high, rest, tuple(assumptions))
 
     def _contribution(self, index: int, name: str, signal: Signal) -> Range | Unknown:
         """Return how far one signal moves an unknown below and above its value at rest."""
@@ -226,7 +233,7 @@ class Extremes:
         values = [float(each.values[index]) for each in points]
         if max(abs(each) for each in values) > BELIEVABLE_V:
             return Unknown(RUNS_AWAY)
-        return Range(tidy(min(values)), tidy(max(values)), tidy(rest))
+        return _range(min(values), max(values), rest)
 
     def _swept_points(self) -> list[OperatingPoint] | str:
         if self._sweep is None:

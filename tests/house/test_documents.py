@@ -84,7 +84,7 @@ def test_intent_of_the_readme_can_be_read():
     (text,) = [text for document, _, text in blocks("toml") if document == "README.md"]
     intent = parse_intent(text)
     assert intent.rails == {"VCC": 12.0}
-    assert intent.limit("output-near-rail", "headroom") == 0.5
+    assert intent.limit("output-near-rail", "headroom") == "0.5 V"
 
 
 def test_job_is_told_in_one_paragraph_before_the_commands():
