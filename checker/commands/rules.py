@@ -32,12 +32,18 @@ COLUMN = 12
 @click.option(
     "--check", type=click.Path(), metavar="FOLDER", help="Run the examples of a rule pack and of its topologies."
 )
+@click.option("--measures", is_flag=True, help="List the figures that conditions can read, and the language.")
 @click.option("--intent", type=click.Path(), metavar="FILE", help="Intent file that names house rule folders.")
 @click.option("--format", "form", type=click.Choice(("text", "json")), default="text", show_default=True)
-def rules(name: str | None, check: str | None, intent: str | None, form: str) -> int:
+def rules(name: str | None, check: str | None, measures: bool, intent: str | None, form: str) -> int:
     """List the rules, tell one in full, or run the examples of a rule pack."""
     if check is not None:
         return check_folder(Path(check))
+    if measures:
+        options = report_options(FORMATS["text"], None, "never")
+        lines = measure_lines(options.width)
+        deliver(write(lines, is_coloured=options.is_coloured, is_ascii=options.is_ascii))
+        return 0
     pack = _pack(intent)
     chosen = pack.rules if name is None else (_find(pack, name),)
     if form == "json":
@@ -101,6 +107,27 @@ def list_lines(chosen: tuple[Rule, ...], options: Options) -> Iterator[Line]:
     yield ()
     count = len(chosen)
     yield ((f"{count} rule{'s' if count != 1 else ''}; `ampwarden rules NAME` tells one in full", ""),)
+
+
+def measure_lines(width: int) -> Iterator[Line]:
+    """Yield the language of conditions, then every figure under its subject, from the registry."""
+    from ..analysis import list_measures
+    from ..analysis.relations import RELATIONS
+    from ..rulebook.conditions import describe_language
+
+    yield from (((row, ""),) for row in describe_language().splitlines())
+    subject = None
+    for each in list_measures():
+        if each.subject != subject:
+            subject = each.subject
+            yield ()
+            yield ((f"of a {subject}", "heading"),)
+            relations = [f"{name} ({found.members}s)" for (kind, name), found in RELATIONS.items() if kind == subject]
+            if relations:
+                yield from _row("members", ", ".join(relations), width)
+        unit = f" ({each.unit})" if each.unit else f" ({each.kind})" if each.kind != "number" else ""
+        first = each.text.split("\n\n")[0].replace("``", "")
+        yield from wrap([(f"{each.name}{unit}: {' '.join(first.split())}", "")], width, 2, 6)
 
 
 def rule_lines(rule: Rule, width: int) -> Iterator[Line]:
@@ -188,7 +215,11 @@ def check_folder(folder: Path) -> int:
         if outcome.trouble is not None:
             failed += 1
             tell(f"{outcome.path}:{outcome.line}  {outcome.owner}: example `{outcome.title}` {outcome.trouble}")
-    things = [f"{len(own_rules)} rules" if own_rules else "", f"{len(named)} topologies" if named else ""]
+    things = [_count(len(own_rules), "rule", "rules"), _count(len(named), "topology", "topologies")]
     what = " and ".join(each for each in things if each)
     deliver([f"{what}, {count} examples, {failed} not as expected\n"], is_for_reading=True)
     return 1 if failed else 0
+
+
+def _count(number: int, one: str, many: str) -> str:
+    return "" if number == 0 else f"{number} {one if number == 1 else many}"

@@ -116,3 +116,12 @@ def test_first_command_of_the_readme_reviews_the_samples_on_a_fresh_machine(tmp_
         pytest.skip("dependencies cannot be fetched here: no package index")
     assert done.returncode in {0, 1}, done.stderr
     assert done.stdout.splitlines()[-1].startswith("verdict")
+
+
+def test_first_rule_of_the_contributor_guide_loads_and_its_examples_hold(tmp_path):
+    text = next(text for document, _, text in blocks("toml") if document == "DEVELOPERS.md")
+    place = tmp_path / "house-rules" / "checks" / "gain"
+    place.mkdir(parents=True)
+    (place / "house-gain-high.toml").write_text(text, encoding="utf-8")
+    done = run("ampwarden rules --check house-rules", tmp_path)
+    assert done == "1 rule, 2 examples, 0 not as expected\n"
