@@ -12,7 +12,7 @@ b       independent sources
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, field
 from typing import Protocol
 
@@ -155,11 +155,10 @@ def build_system(
     nets = [net for net in circuit.nets if net != circuit.ground]
     known = {*nets, circuit.ground}
     inner_parts = [part for each in with_body.values() for part in each.inner]
-    for part in inner_parts:
-        for net in (*part.nets, *(part.control if part.kind in _NET_CONTROLLED else ())):
-            if net not in known:
-                known.add(net)
-                nets.append(net)
+    for net in _further_nets(circuit, inner_parts):
+        if net not in known:
+            known.add(net)
+            nets.append(net)
     system = System(
         circuit=circuit,
         unknowns=list(nets),
@@ -195,6 +194,19 @@ def build_system(
         system.drivers.setdefault(net, row)
     system.floating = _hold_floating(system, [*parts, *later], forced)
     return system
+
+
+def _further_nets(circuit: Board, inner_parts: Iterable[Part]) -> Iterator[str]:
+    """Yield nets that no pin of the circuit meets: inside of bodies, or only read by a controlled source."""
+    for part in inner_parts:
+        yield from part.nets
+        if part.kind in _NET_CONTROLLED:
+            yield from part.control
+    for part in circuit.parts.values():
+        if part.kind in _NET_CONTROLLED:
+            yield from part.control
+    for amplifier in circuit.amplifiers:
+        yield from (amplifier.plus, amplifier.minus, amplifier.output)
 
 
 _NET_CONTROLLED = (PartKind.VCVS, PartKind.VCCS)
