@@ -20,12 +20,18 @@ if TYPE_CHECKING:
     from .bench import Bench
 
 PERFECT_DB = 200.0  # rejections beyond are rounding of the solve
-ROLES = ("inverting_input", "feedback", "noninverting_input", "reference_leg")
+_ROLES = ("inverting_input", "feedback", "noninverting_input", "reference_leg")
+
+
+def divider_roles(stage: Stage) -> tuple[str, str, str, str]:
+    """Return the roles of R1, R2, R3 and R4; in a stage of three amplifiers those of the last one."""
+    feedback = "feedback_3" if "feedback_3" in stage.roles and "feedback" not in stage.roles else "feedback"
+    return _ROLES[0], feedback, _ROLES[2], _ROLES[3]
 
 
 def ratios(stage: Stage) -> tuple[float, float] | None:
     """Return R2/R1 and R4/R3 of a difference stage; None when the resistances are not known."""
-    values = [stage.values.get(role) for role in ROLES]
+    values = [stage.values.get(role) for role in divider_roles(stage)]
     if any(value is None or not 0 < value < 1e29 for value in values):
         return None
     r1, r2, r3, r4 = (float(value) for value in values if value is not None)
@@ -116,7 +122,7 @@ def ratio_spread(bench: Bench, stage: Stage) -> tuple[float, float, float, float
     if ratio is not None:  # a ratio off by t is one resistor off by t
         return 0.0, ratio, 0.0, ratio
     found = []
-    for role in ROLES:
+    for role in divider_roles(stage):
         names = [name for name in stage.roles.get(role, ()) if _is_resistor(bench, name)]
         tolerances = [tolerance_of(bench, name) for name in names]
         if not names or any(each is None for each in tolerances):
@@ -154,7 +160,7 @@ def ratio_noninverting(bench: Bench, subject: Subject) -> Figure:
 def divider_parts(bench: Bench, subject: Subject) -> Figure:
     """Designators of the four resistors of a difference stage."""
     stage = stage_of(subject)
-    return Known(tuple(name for role in ROLES for name in stage.roles.get(role, ())))
+    return Known(tuple(name for role in divider_roles(stage) for name in stage.roles.get(role, ())))
 
 
 @measure("stage", unit="%")

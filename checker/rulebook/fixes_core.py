@@ -75,26 +75,20 @@ def bias_resistor(reading: SubjectReading) -> Iterator[Proposal]:
 def restore_ratio(reading: SubjectReading) -> Iterator[Proposal]:
     """Change one of the four resistors of a difference stage to the preferred value that makes both ratios equal."""
     from ..analysis.stage_gain import stage_of
+    from ..analysis.stage_matching import divider_roles
 
     bench = reading.bench
     stage = stage_of(reading.subject)
-    found = {
-        role: lone_resistor(bench, stage, role)
-        for role in ("inverting_input", "feedback", "noninverting_input", "reference_leg")
-    }
-    values = {role: stage.values.get(role) for role in found}
-    if any(value is None or not 0 < value < 1e29 for value in values.values()):
+    roles = divider_roles(stage)
+    values = [stage.values.get(role) for role in roles]
+    if any(value is None or not 0 < value < 1e29 for value in values):
         return
-    r1, r2, r3, r4 = (float(value) for value in values.values() if value is not None)
-    wanted = {
-        "reference_leg": r3 * r2 / r1,
-        "noninverting_input": r4 * r1 / r2,
-        "feedback": r1 * r4 / r3,
-        "inverting_input": r2 * r3 / r4,
-    }
+    r1, r2, r3, r4 = (float(value) for value in values if value is not None)
+    # the reference leg first: it moves the gain least
+    wanted = [(roles[3], r3 * r2 / r1), (roles[2], r4 * r1 / r2), (roles[1], r1 * r4 / r3), (roles[0], r2 * r3 / r4)]
     tried = []
-    for order, (role, ideal) in enumerate(wanted.items()):
-        part = found[role]
+    for order, (role, ideal) in enumerate(wanted):
+        part = lone_resistor(bench, stage, role)
         if part is None:
             continue
         for series in dict.fromkeys(("E24", series_of(bench, "resistor"))):

@@ -6,7 +6,7 @@ import math
 from collections.abc import Mapping, Sequence
 
 from ..circuit.graph import Circuit
-from ..circuit.parts import Amplifier
+from ..circuit.parts import Amplifier, PartKind
 from ..text.expressions import ExpressionError, evaluate
 from .loops import amplifiers_in_loops
 from .match import Match, Matcher
@@ -17,6 +17,7 @@ from .templates import Template, load_templates
 
 BLOCKED_OHM = 1e30  # what a formula sees for a branch that blocks DC
 
+_TRANSISTORS = (PartKind.BJT, PartKind.MOSFET, PartKind.JFET)
 _PACKAGED = {"instrumentation amplifier": "instrumentation-amplifier", "difference amplifier": "difference-amplifier"}
 
 
@@ -74,6 +75,7 @@ def role_values(circuit: Circuit, match: Match) -> dict[str, float]:
             _describe(values, role, edges)
     values["through"] = _through(values, match)
     values["inputs_driven"] = float(_driven_inputs(circuit, match))
+    values["beside_transistor"] = float(_beside_transistor(circuit, match))
     values["inputs"] = float(len(dict.fromkeys(match.entries)))
     values["loads"] = float(_loads(circuit, match))
     frequencies = [
@@ -154,21 +156,38 @@ def _driven_inputs(circuit: Circuit, match: Match) -> int:
     return count
 
 
+def _beside_transistor(circuit: Circuit, match: Match) -> bool:
+    """True when a transistor meets the anchor's inputs, straight or over one branch: feedback may close over it."""
+    anchor = match.amplifiers[match.template.amplifiers[0].name]
+    place = match.reductions[0].place
+    near = [net for pin in (anchor.plus, anchor.minus) for net in (pin, *(edge.other(pin) for edge in place.at(pin)))]
+    return any(
+        part.kind in _TRANSISTORS
+        for net in near
+        if not circuit.is_stiff(net) and not circuit.is_hub(net)
+        for part in circuit.parts_on(net)
+    )
+
+
 def _loads(circuit: Circuit, match: Match) -> int:
     output = match.amplifiers[match.template.amplifiers[0].name].output
     own = {name for edges in match.roles.values() for edge in edges for name in edge.designators}
     own |= {each.designator for each in match.amplifiers.values()}
     loads = {designator for designator, _ in circuit.pins_on(output)} - own
-    same_part = (
-        [
-            each
-            for each in circuit.amplifiers
-            if each.name not in {one.name for one in match.amplifiers.values()} and output in {each.plus, each.minus}
-        ]
-        if circuit.degree(output) > 1
-        else []
-    )
-    return len(loads) + len([each for each in same_part if each.designator in own])
+    members = {one.name for one in match.amplifiers.values()}
+    parts = {designator for designator, _ in circuit.pins_on(output)}
+    same_part = [
+        each
+        for designator in parts & own
+        for each in _channels(circuit, designator)
+        if each.name not in members and output in {each.plus, each.minus}
+    ]
+    return len(loads) + len(same_part)
+
+
+def _channels(circuit: Circuit, designator: str) -> tuple[Amplifier, ...]:
+    names = (designator, *(f"{designator}{letter}" for letter in "ABCDEFGH"))
+    return tuple(found for name in names if (found := circuit.amplifier(name)) is not None)
 
 
 def _holds(template: Template, values: Mapping[str, float], match: Match, in_loops: frozenset[str]) -> bool:

@@ -261,7 +261,8 @@ def _read_lines(text: str, wrong: Any) -> tuple[list[AmplifierLine], list[Branch
         elif re.match(r"^A\d*$", words[0]) and len(nets) == 3:
             amplifiers.append(AmplifierLine(words[0], *nets))
         elif (match := _BRANCH.match(words[0])) and len(nets) == 2:
-            branches.append(BranchLine(match["letter"], match["role"], *nets, *_COUNTS[match["count"]]))
+            least, most = _COUNTS[match["count"]]
+            branches.append(BranchLine(match["letter"], match["role"], nets[0], nets[1], least, most))
         else:
             wrong(
                 f"template line `{row.strip()}` is neither an amplifier nor a branch",
