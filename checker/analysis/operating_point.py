@@ -292,7 +292,10 @@ def _newton(
             if bridge_s:
                 for one, two in zip(indices, indices[1:], strict=False):
                     junctions.conductance(one, two, bridge_s)
-        found = solve_once(system.size, fixed.extended(junctions), pushed)
+        try:
+            found = solve_once(system.size, fixed.extended(junctions), pushed)
+        except SingularEquations:
+            return None  # all junctions of a loop are off at the guess; bridged ones are not
         change = np.abs(found - values)[:nets]
         is_close = bool(np.all(change <= VOLT_TOLERANCE + RELATIVE_TOLERANCE * np.abs(found[:nets])))
         if count > 20:  # damp what goes round in a circle

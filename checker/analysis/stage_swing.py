@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING
 
 from .figures import Figure, Known, Unknown
 from .measures import measure
-from .stage_gain import gain_doubt, stage_of
+from .stage_gain import gain_doubt, signal_frequencies, stage_of
 from .subjects import Subject
 
 if TYPE_CHECKING:
@@ -142,3 +142,18 @@ def offset_v(bench: Bench, subject: Subject) -> Figure:
         both = sum(float(weights[index]) for index in (row.plus, row.minus) if index >= 0)
         total += abs(both) * abs(bias)
     return Known(total, tuple(notes))
+
+
+@measure("stage", unit="V/s")
+def slew_demand_v_per_s(bench: Bench, subject: Subject) -> Figure:
+    """Slew rate that the largest swing at the highest signal frequency asks for: 2*pi*f times the peak (V/s)."""
+    import math
+
+    stage = stage_of(subject)
+    frequencies = signal_frequencies(bench, stage)
+    if not frequencies:
+        return Unknown("no signal frequency is known", f"frequency of [signals.{(stage.inputs or ('NET',))[0]}]")
+    found = _output_range(bench, subject)
+    if isinstance(found, Unknown):
+        return found
+    return Known(math.pi * frequencies[-1] * (found.high - found.low), found.assumptions)
