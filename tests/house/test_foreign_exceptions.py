@@ -18,7 +18,7 @@ WORDS = (
     "R1", "R2", "C1", "U1", "XU1", "Q1", "D1", "V1", "E1", "0", "gnd", "VCC", "VEE", "in", "out", "n1", "10k",
     "4k7", "1M", "1e999", "-5", "{a+b}", "'x'", "SIN(", ")", "AC", "DC", "POLY(2)", "VALUE=", ".subckt", ".ends",
     ".model", ".param", ".include", ".lib", ".if", ".end", "NPN", "D(", "IS=1e-14", ")", "+", "*", ";", "$", "\t",
-    ",", "=", "a=1", "a={a}", "TL072", "LM358", "R=0",
+    ",", "=", "a=1", "a={a}", "TL082", "LM358", "R=0",
 )  # fmt: skip
 
 line = st.lists(st.sampled_from(WORDS), max_size=8).map(" ".join)

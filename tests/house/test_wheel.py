@@ -19,8 +19,8 @@ V2 VEE 0 -12
 VIN in 0 SIN(0 0.5 1k)
 R1 in n1 10k
 R2 n1 out 47k
-XU1 0 n1 VCC VEE out TL072
-.subckt TL072 inp inn vcc vee out
+XU1 0 n1 VCC VEE out TL082
+.subckt TL082 inp inn vcc vee out
 E1 out 0 inp inn 100k
 .ends
 .end
