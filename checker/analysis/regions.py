@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 
 from ..circuit.graph import Circuit
 from ..circuit.parts import Amplifier, Part, PartKind
+from ..topology.loops import without_ends
 from .subjects import CURRENT_INPUT
 from .system import System, build_system
 
@@ -144,28 +145,12 @@ def _drivers(circuit: Circuit, amplifier: Amplifier, ends: frozenset[str]) -> li
     return found
 
 
-def _without_ends(drivers: Mapping[str, set[str]]) -> dict[str, None]:
-    """Return the names that are left when all that nothing drives has been taken away, again and again."""
-    open_drivers = {name: len(each) for name, each in drivers.items()}
-    driven: dict[str, list[str]] = {}
-    for name, each in drivers.items():
-        for driver in each:
-            driven.setdefault(driver, []).append(name)
-    waiting = [name for name, count in open_drivers.items() if count == 0]
-    while waiting:
-        for name in driven.get(waiting.pop(), ()):
-            open_drivers[name] -= 1
-            if open_drivers[name] == 0:
-                waiting.append(name)
-    return {name: None for name, count in open_drivers.items() if count > 0}
-
-
 def _loops(circuit: Circuit, ends: frozenset[str]) -> dict[str, tuple[Amplifier, ...]]:
     """Return the amplifiers that stand in one loop with each other, by name."""
     if len(circuit.amplifiers) < 2:
         return {}
     drivers = {each.name: set(_drivers(circuit, each, ends)) for each in circuit.amplifiers}
-    looped = _without_ends(drivers)
+    looped = without_ends(drivers)
     if not looped:
         return {}
     import networkx

@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import math
 import operator
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from functools import lru_cache
 from typing import TYPE_CHECKING, Any
 
@@ -125,6 +125,37 @@ def _grammar() -> Lark:
     return Lark(grammar_text("expression"), parser="lalr", import_paths=[shared], maybe_placeholders=False)
 
 
+_PREPARED: dict[str, Tree] = {}
+
+
+def prepare(texts: Iterable[str]) -> None:
+    """Parse many expressions at once, from the cache of compiled knowledge when they were parsed before.
+
+    Texts that are no expressions are left for :func:`parse_expression` to complain about.
+    """
+    from ..resources import compiled
+
+    wanted = sorted(set(texts) - _PREPARED.keys())
+    if not wanted:
+        return
+
+    def build() -> dict[str, Any]:
+        rows = {}
+        for text in wanted:
+            try:
+                rows[text] = parse_expression(text)
+            except ExpressionError:
+                continue
+        return rows
+
+    rows = compiled("expressions", [(text, b"") for text in wanted], build)
+    _PREPARED.update({text: _as_tuples(row) for text, row in rows.items()})
+
+
+def _as_tuples(row: Any) -> Any:
+    return tuple(_as_tuples(each) for each in row) if isinstance(row, list | tuple) else row
+
+
 @lru_cache(maxsize=16384)
 def parse_expression(text: str) -> Tree:
     """Parse an expression into nested tuples.
@@ -134,6 +165,9 @@ def parse_expression(text: str) -> Tree:
     ExpressionError
         With the column where reading stopped.
     """
+    held = _PREPARED.get(text)
+    if held is not None:
+        return held
     number = read_value(text.strip())
     if number is not None:
         return ("number", number)

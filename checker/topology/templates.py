@@ -27,7 +27,7 @@ from typing import Any
 
 from ..errors import Problem, RulePackError
 from ..resources import TomlDocument, compiled, core_folder, gather, parse_toml
-from ..text.expressions import ExpressionError, parse_expression
+from ..text.expressions import ExpressionError, parse_expression, prepare
 
 DEPTHS = ("full", "plain")
 
@@ -133,7 +133,9 @@ def _load(sources: tuple[tuple[str, bytes], ...]) -> list[Template]:
 
     if not sources:
         return []
-    return [_from_plain(each) for each in compiled("topologies", sources, build)]
+    found = [_from_plain(each) for each in compiled("topologies", sources, build)]
+    prepare(text for each in found for text in (*each.requires, *each.formulas.values()))
+    return found
 
 
 def _from_plain(data: Mapping[str, Any]) -> Template:
